@@ -1,0 +1,102 @@
+//! The table of functions an expression may call.
+
+/// Every function of the language.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+#[allow(missing_docs, reason = "each variant is the function of that name; the table below documents it")]
+pub enum Function {
+    Exp,
+    Log,
+    Log1p,
+    Expm1,
+    Sqrt,
+    Sin,
+    Cos,
+    Tan,
+    Asin,
+    Acos,
+    Atan,
+    Sinh,
+    Cosh,
+    Tanh,
+    Logistic,
+    Logit,
+    Lgamma,
+    Digamma,
+    BesselI,
+    Erf,
+    Erfc,
+    NormalCdf,
+    NormalLogCdf,
+    LogSumExp,
+    Abs,
+    Min,
+    Max,
+    // Further ones the families are written in; users may call them too.
+    /// `log_logistic(x)` = -log(1 + exp(-x))
+    LogLogistic,
+    /// `log1mexp(x)` = log(1 - exp(-x)), x > 0
+    Log1mexp,
+    /// `normal_log_interval(a, b)` = log(Phi(b) - Phi(a)), a < b
+    NormalLogInterval,
+    /// `polygamma(m, x)`, m a whole number >= 1 (1: trigamma)
+    Polygamma,
+    /// `log_mix(w1, a1, w2, a2, ...)` = log(sum w_i exp(a_i)), weights >= 0
+    LogMix,
+}
+
+/// One row of the table: the function, its written name, how many arguments (fewest, most), and what it is in words.
+pub struct Entry(pub Function, pub &'static str, pub usize, pub usize, pub &'static str);
+
+/// All functions by name.
+pub const TABLE: &[Entry] = &[
+    Entry(Function::Exp, "exp", 1, 1, "e to the power x"),
+    Entry(Function::Log, "log", 1, 1, "natural logarithm"),
+    Entry(Function::Log1p, "log1p", 1, 1, "log(1 + x), accurate near 0"),
+    Entry(Function::Expm1, "expm1", 1, 1, "exp(x) - 1, accurate near 0"),
+    Entry(Function::Sqrt, "sqrt", 1, 1, "square root"),
+    Entry(Function::Sin, "sin", 1, 1, "sine"),
+    Entry(Function::Cos, "cos", 1, 1, "cosine"),
+    Entry(Function::Tan, "tan", 1, 1, "tangent"),
+    Entry(Function::Asin, "asin", 1, 1, "inverse sine"),
+    Entry(Function::Acos, "acos", 1, 1, "inverse cosine"),
+    Entry(Function::Atan, "atan", 1, 1, "inverse tangent"),
+    Entry(Function::Sinh, "sinh", 1, 1, "hyperbolic sine"),
+    Entry(Function::Cosh, "cosh", 1, 1, "hyperbolic cosine"),
+    Entry(Function::Tanh, "tanh", 1, 1, "hyperbolic tangent"),
+    Entry(Function::Logistic, "logistic", 1, 1, "1 / (1 + exp(-x))"),
+    Entry(Function::Logit, "logit", 1, 1, "log(x / (1 - x))"),
+    Entry(Function::Lgamma, "lgamma", 1, 1, "logarithm of the gamma function"),
+    Entry(Function::Digamma, "digamma", 1, 1, "derivative of lgamma"),
+    Entry(Function::BesselI, "bessel_i", 2, 2, "modified Bessel function of the first kind, (order, x)"),
+    Entry(Function::Erf, "erf", 1, 1, "error function"),
+    Entry(Function::Erfc, "erfc", 1, 1, "1 - erf(x), accurate in the tail"),
+    Entry(Function::NormalCdf, "normal_cdf", 1, 1, "standard normal distribution function"),
+    Entry(Function::NormalLogCdf, "normal_log_cdf", 1, 1, "its logarithm, accurate far in the tail"),
+    Entry(Function::LogSumExp, "log_sum_exp", 1, usize::MAX, "log of the sum of exponentials"),
+    Entry(Function::Abs, "abs", 1, 1, "absolute value"),
+    Entry(Function::Min, "min", 1, usize::MAX, "smallest"),
+    Entry(Function::Max, "max", 1, usize::MAX, "largest"),
+    Entry(Function::LogLogistic, "log_logistic", 1, 1, "log(logistic(x))"),
+    Entry(Function::Log1mexp, "log1mexp", 1, 1, "log(1 - exp(-x)), x > 0"),
+    Entry(
+        Function::NormalLogInterval,
+        "normal_log_interval",
+        2,
+        2,
+        "log of the standard normal probability between a and b",
+    ),
+    Entry(Function::Polygamma, "polygamma", 2, 2, "derivative of digamma of the given order, (order, x)"),
+    Entry(Function::LogMix, "log_mix", 2, usize::MAX, "log(w1 exp(a1) + w2 exp(a2) + ...), (w1, a1, w2, a2, ...)"),
+];
+
+impl Function {
+    /// The function with this written name.
+    pub fn named(name: &str) -> Option<Function> {
+        TABLE.iter().find(|e| e.1 == name).map(|e| e.0)
+    }
+
+    /// Its row in the table.
+    pub fn entry(self) -> &'static Entry {
+        TABLE.iter().find(|e| e.0 == self).unwrap_or(&TABLE[0])
+    }
+}

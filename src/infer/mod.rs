@@ -1,0 +1,104 @@
+//! Covariances, multipliers, score, likelihood-ratio and Wald tests, warnings.
+
+use crate::likelihood::Information;
+use crate::math::Matrix;
+use crate::restriction::Role;
+use crate::solve::{End, Fit};
+
+/// One estimate.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Estimate {
+    /// Parameter or quantity.
+    pub name: String,
+    /// Value.
+    pub value: f64,
+    /// Standard error; `None` with the reason in `Block::reasons`.
+    pub se: Option<f64>,
+    /// Lower limit, unclipped.
+    pub lower: Option<f64>,
+    /// Upper limit, unclipped.
+    pub upper: Option<f64>,
+    /// On which end of its range it stands.
+    pub edge: Option<End>,
+}
+
+/// One multiplier.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Multiplier {
+    /// Name of the restriction.
+    pub name: String,
+    /// Its role.
+    pub role: Role,
+    /// Its equation.
+    pub equation: String,
+    /// lambda; `None` where it is undetermined.
+    pub value: Option<f64>,
+    /// Standard error (tested ones).
+    pub se: Option<f64>,
+    /// lambda / se.
+    pub z: Option<f64>,
+    /// Two-sided p of z.
+    pub p: Option<f64>,
+    /// left - right at the unrestricted estimate.
+    pub gap: Option<f64>,
+    /// Why values are missing.
+    pub reason: Option<String>,
+}
+
+/// A chi-square test.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Test {
+    /// The statistic.
+    pub chi_square: f64,
+    /// Degrees of freedom.
+    pub df: usize,
+    /// Upper-tail probability.
+    pub p: f64,
+    /// Its decimal logarithm, finite also where p underflows.
+    pub log10_p: f64,
+}
+
+/// One fit with what is inferred from it.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Block {
+    /// The fit.
+    pub fit: Fit,
+    /// Estimates; empty unless the verdict is a strict maximum.
+    pub estimates: Vec<Estimate>,
+    /// Covariance of the estimates, n by n; `None` with the reason.
+    pub covariance: Option<Matrix>,
+    /// Derived quantities.
+    pub quantities: Vec<Estimate>,
+    /// Multipliers, family then maintained then tested (maintained ones only for the unrestricted fit).
+    pub multipliers: Vec<Multiplier>,
+    /// Why the covariance is missing.
+    pub reason: Option<String>,
+}
+
+/// A warning with its stable code.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Warning {
+    /// Stable code, such as `few-rows`.
+    pub code: &'static str,
+    /// A sentence.
+    pub message: String,
+}
+
+/// All that is inferred from one problem. A test that cannot be given is an `Err` with the reason.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Outcome {
+    /// Which information the tests and covariances use.
+    pub information: Information,
+    /// Restricted fit.
+    pub restricted: Block,
+    /// Unrestricted fit; `Err` with the reason when it was not made or failed.
+    pub unrestricted: Result<Block, String>,
+    /// Score test.
+    pub score: Result<Test, String>,
+    /// Likelihood-ratio test.
+    pub lr: Result<Test, String>,
+    /// Wald test.
+    pub wald: Result<Test, String>,
+    /// Warnings.
+    pub warnings: Vec<Warning>,
+}

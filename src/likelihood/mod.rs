@@ -1,0 +1,89 @@
+//! Family, design and table joined: value, gradient, Hessian, per-row scores and information of the log-likelihood.
+
+pub mod coordinates;
+pub mod model;
+
+pub use coordinates::Coordinates;
+pub use model::Model;
+
+use crate::math::{Matrix, Range, Vector};
+
+/// A free parameter.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Parameter {
+    /// Its name as input accepts it, such as `rate.kiln.middle:soak`.
+    pub name: String,
+    /// Where it may lie.
+    pub range: Range,
+    /// What it means in words, such as `log of rate(south) / rate(north)`.
+    pub meaning: String,
+}
+
+/// How much of an evaluation is wanted.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Order {
+    /// The value only.
+    Value,
+    /// Value and gradient.
+    Gradient,
+    /// Value, gradient and Hessian.
+    Hessian,
+}
+
+/// The log-likelihood at a point, in working coordinates. What was not asked for is empty (length 0).
+#[derive(Debug, Clone, PartialEq)]
+pub struct Evaluation {
+    /// l; NaN or -inf where it is undefined or impossible.
+    pub value: f64,
+    /// Gradient, length n.
+    pub gradient: Vector,
+    /// Hessian, n by n.
+    pub hessian: Matrix,
+}
+
+/// The four matrices of the contract's section on information.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Information {
+    /// Sum of E[s s'] given the columns that are not the response.
+    Expected,
+    /// Minus the Hessian.
+    Observed,
+    /// Sum of s s' over the rows.
+    Outer,
+    /// Bread observed, filling outer.
+    Robust,
+}
+
+/// A log-likelihood with its parameters. `phi` are working coordinates, `theta = coordinates().theta(phi)` the
+/// parameters as named; they are the same unless a design was orthogonalised.
+pub trait LogLikelihood: Sync {
+    /// The free parameters, in order.
+    fn parameters(&self) -> &[Parameter];
+    /// The map between working coordinates and parameters.
+    fn coordinates(&self) -> &Coordinates;
+    /// Value and, as asked, gradient and Hessian by `phi`.
+    fn evaluate(&self, phi: &Vector, order: Order) -> Evaluation;
+    /// `Expected` or `Outer` information in working coordinates; `None` where the family has none.
+    /// Entries may be infinite for a parameter on the edge of its range.
+    fn information(&self, kind: Information, phi: &Vector) -> Option<Matrix>;
+    /// Sum of the weights of the rows.
+    fn weight_total(&self) -> f64;
+    /// Starting points (`theta`): the first computed from the data, the rest spread deterministically by `seed`.
+    fn starts(&self, count: usize, seed: u64) -> Vec<Vector>;
+    /// Whether l is known to be concave in theta, so that one start suffices when the restrictions are linear.
+    fn concave(&self) -> bool;
+    /// Whether the point is a collapsed one that must not count as an estimate (a mixture component on few rows);
+    /// the text says which component.
+    fn collapsed(&self, _phi: &Vector) -> Option<String> {
+        None
+    }
+    /// Permutations of the parameters that leave l as it is (relabelled mixture components): each lists, for new
+    /// position i, the old index. The identity is left out.
+    fn relabellings(&self) -> Vec<Vec<usize>> {
+        Vec::new()
+    }
+    /// Whether a kink (a tie of abs, min, max) lies at this point.
+    fn kink(&self, _phi: &Vector) -> bool {
+        false
+    }
+}

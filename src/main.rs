@@ -1,0 +1,4 @@
+//! The thin binary: everything is in the library.
+fn main() -> std::process::ExitCode {
+    guyline::cli::run()
+}

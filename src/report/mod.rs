@@ -1,0 +1,1 @@
+//! One result, rendered as text, JSON and CSV.

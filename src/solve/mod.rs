@@ -1,0 +1,95 @@
+//! The Lagrangian, the Newton iteration, globalisation, edges, starts, certificate.
+
+pub mod certificate;
+
+pub use certificate::{Certificate, Direction, Verdict};
+
+use crate::likelihood::LogLikelihood;
+use crate::math::Vector;
+use crate::restriction::System;
+
+/// What is to be maximised, and under what.
+#[derive(Clone, Copy)]
+pub struct Problem<'a> {
+    /// The log-likelihood.
+    pub likelihood: &'a dyn LogLikelihood,
+    /// The restrictions imposed.
+    pub restrictions: &'a System,
+}
+
+/// How the search is done.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Search {
+    /// Starting points; `None`: one where l is concave and the restrictions linear, else 20.
+    pub starts: Option<usize>,
+    /// Seed of the spread starts.
+    pub seed: u64,
+    /// Most iterations of one start.
+    pub iterations: usize,
+    /// Whether an independent method must agree.
+    pub second_opinion: bool,
+}
+
+impl Default for Search {
+    fn default() -> Self {
+        Search { starts: None, seed: 1, iterations: 200, second_opinion: false }
+    }
+}
+
+/// Which end of its range a parameter stands on.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum End {
+    /// The lower end.
+    Lower,
+    /// The upper end.
+    Upper,
+}
+
+/// A parameter on a closed end of its range at the answer.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Edge {
+    /// Index of the parameter.
+    pub parameter: usize,
+    /// Which end.
+    pub end: End,
+    /// Its multiplier nu: slope of l in the edge's position, in the parameter's unit.
+    pub multiplier: f64,
+}
+
+/// The best point found and why it may be believed (or not).
+#[derive(Debug, Clone, PartialEq)]
+pub struct Fit {
+    /// Working coordinates.
+    pub phi: Vector,
+    /// Parameters as named.
+    pub theta: Vector,
+    /// l there.
+    pub log_likelihood: f64,
+    /// One multiplier a restriction, in the order of the system; 0 for one dropped as redundant.
+    pub multipliers: Vector,
+    /// Active edges.
+    pub edges: Vec<Edge>,
+    /// Indices of restrictions that depend on the others at the answer (redundant).
+    pub redundant: Vec<usize>,
+    /// The certificate.
+    pub certificate: Certificate,
+    /// One line an iteration of the best start.
+    pub trace: Vec<Step>,
+}
+
+/// One iteration.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Step {
+    /// Iteration, from 0.
+    pub iteration: usize,
+    /// l.
+    pub log_likelihood: f64,
+    /// Largest scaled residual of a restriction.
+    pub feasibility: f64,
+    /// Largest scaled component of the Lagrangian's gradient.
+    pub stationarity: f64,
+    /// Step length taken, 0 to 1.
+    pub length: f64,
+    /// Multiple of the scaling matrix added to the Hessian to correct its inertia.
+    pub shift: f64,
+}

@@ -1,0 +1,1 @@
+//! The TOML study, validated into library types.
