@@ -1,0 +1,7 @@
+//! The integration suite: one binary, a module a subject.
+#![allow(clippy::unwrap_used, clippy::print_stdout, clippy::print_stderr)]
+
+#[path = "../generate/tiles.rs"]
+mod tiles;
+
+mod datasets;
