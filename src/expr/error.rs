@@ -1,6 +1,6 @@
 //! What can be wrong with an expression, with the place and the advice.
 
-use super::Span;
+use super::{Name, Span, nearest};
 
 /// A fault in a text, at a place in it.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -23,10 +23,44 @@ pub enum Fault {
     /// A name that nothing carries; the first field is what it should have been (`parameter`, `column`, `function`).
     #[error("no {0} is called {1}")]
     Unknown(&'static str, String),
+    /// A pattern that no name fits; the first field is what the names are (`parameter`, `column`).
+    #[error("no {0} matches {1}")]
+    Unmatched(&'static str, String),
     /// A function with a wrong number of arguments.
     #[error("{0} takes {1}, not {2}")]
     Arguments(&'static str, String, usize),
     /// Something of the wrong sort: a category in arithmetic, a comparison where a number belongs.
     #[error("{0}")]
     Sort(String),
+}
+
+impl ExprError {
+    /// A text that breaks the grammar.
+    pub fn syntax(span: Span, message: impl Into<String>) -> Self {
+        ExprError { span, fault: Fault::Syntax(message.into()), advice: None }
+    }
+
+    /// Something of the wrong sort.
+    pub fn sort(span: Span, message: impl Into<String>) -> Self {
+        ExprError { span, fault: Fault::Sort(message.into()), advice: None }
+    }
+
+    /// A name or pattern that fits nothing among `candidates`, with the nearest of them as advice.
+    pub fn unknown<'a>(
+        span: Span,
+        what: &'static str,
+        name: &Name,
+        candidates: impl IntoIterator<Item = &'a str>,
+    ) -> Self {
+        let text = name.to_string();
+        let advice = nearest(&text, candidates).map(|n| format!("nearest name: {n}"));
+        let fault = if name.is_pattern() { Fault::Unmatched(what, text) } else { Fault::Unknown(what, text) };
+        ExprError { span, fault, advice }
+    }
+
+    /// The same fault with this advice.
+    pub fn advise(mut self, advice: impl Into<String>) -> Self {
+        self.advice = Some(advice.into());
+        self
+    }
 }
