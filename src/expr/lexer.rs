@@ -1,48 +1,10 @@
 //! Text to tokens with their places. A whole name with all its pieces is one token, so that `share.*` is told from a
 //! product here and nowhere else.
 
+use super::blame::stray;
 use super::name::{Joiner, Name, Piece};
+use super::token::{Lexeme, Mark, Token};
 use super::{ExprError, Span};
-
-/// A token and where it stands.
-#[derive(Debug, Clone, PartialEq)]
-pub(super) struct Token {
-    pub kind: Lexeme,
-    pub span: Span,
-}
-
-/// What a token is.
-#[derive(Debug, Clone, PartialEq)]
-pub(super) enum Lexeme {
-    Number(f64),
-    /// One plain piece standing alone: a name, a function, or one of `and or not pi if sum`.
-    Word(String),
-    /// Any other name or pattern.
-    Name(Name),
-    /// A text in single quotes standing alone.
-    Text(String),
-    Mark(Mark),
-    End,
-}
-
-/// Operators and punctuation.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum Mark {
-    Plus,
-    Minus,
-    Star,
-    Slash,
-    Caret,
-    Open,
-    Close,
-    Comma,
-    Less,
-    AtMost,
-    More,
-    AtLeast,
-    Equal,
-    Unequal,
-}
 
 /// All tokens of the text; the last is `End`.
 pub(super) fn tokens(text: &str) -> Result<Vec<Token>, ExprError> {
@@ -322,56 +284,14 @@ impl Lexer<'_> {
             ('<', _) => return Ok(Mark::Less),
             ('>', _) => return Ok(Mark::More),
             ('=', _) => return Ok(Mark::Equal),
-            _ => return Err(self.stray(start, c)),
+            (c, _) if c.is_alphabetic() && c != '\u{3c0}' => {
+                self.at = start;
+                return Err(self.foreign_letters());
+            }
+            (c, _) => return Err(stray(c, self.since(start))),
         };
         self.bump();
         Err(ExprError::syntax(self.since(start), message).advise(advice))
-    }
-
-    /// The error for a character that has no meaning, with what was probably meant.
-    fn stray(&mut self, start: usize, c: char) -> ExprError {
-        let span = self.since(start);
-        let typographic = |write: &str| {
-            ExprError::syntax(span, format!("{c} (U+{:04X}) is a typographic sign", c as u32))
-                .advise(format!("write {write}"))
-        };
-        match c {
-            '\u{2212}' | '\u{2012}'..='\u{2015}' | '\u{2010}' | '\u{2011}' => typographic("-"),
-            '\u{d7}' | '\u{b7}' | '\u{22c5}' | '\u{2217}' => typographic("*"),
-            '\u{f7}' | '\u{2044}' | '\u{2215}' => typographic("/"),
-            '\u{2264}' => typographic("<="),
-            '\u{2265}' => typographic(">="),
-            '\u{2260}' => typographic("!="),
-            '\u{2018}' | '\u{2019}' | '\u{201a}' | '\u{2032}' => typographic("straight quotes '"),
-            '\u{201c}' | '\u{201d}' | '\u{201e}' | '\u{2033}' => typographic("straight quotes \""),
-            '\u{b2}' => typographic("^2"),
-            '\u{b3}' => typographic("^3"),
-            '\u{221a}' => typographic("sqrt(...)"),
-            '\u{3c0}' => ExprError::syntax(span, "names are in A-Z").advise("the number is written pi"),
-            c if c.is_alphabetic() => {
-                self.at = start;
-                self.foreign_letters()
-            }
-            '%' => ExprError::syntax(span, "% has no meaning here").advise("five per cent is written 0.05"),
-            '!' => ExprError::syntax(span, "! has no meaning here")
-                .advise("denial is written not, unequal !=, a factorial exp(lgamma(n + 1))"),
-            '&' => ExprError::syntax(span, "& has no meaning here").advise("write and"),
-            '|' => ExprError::syntax(span, "| has no meaning here").advise("write or, or abs(x) for an absolute value"),
-            '[' | ']' | '{' | '}' => {
-                ExprError::syntax(span, format!("{c} has no meaning here")).advise("parentheses are round: ( )")
-            }
-            ':' => ExprError::syntax(span, "a colon stands between two pieces of a name, without spaces")
-                .advise("a product of terms is written rate.kiln.middle:soak, a ratio a / b"),
-            '.' => ExprError::syntax(span, "a dot stands in a number or between two pieces of a name, without spaces"),
-            '#' => {
-                ExprError::syntax(span, "# has no meaning here").advise("comments stand outside the quoted expression")
-            }
-            '~' => ExprError::syntax(span, "~ has no meaning here").advise("an equation is written left = right"),
-            c if c.is_control() => {
-                ExprError::syntax(span, format!("an invisible sign (U+{:04X}) stands here", c as u32))
-            }
-            c => ExprError::syntax(span, format!("{c} has no meaning here")),
-        }
     }
 }
 
@@ -381,7 +301,8 @@ fn begins_piece(c: char) -> bool {
 
 #[cfg(test)]
 mod tests {
-    use super::{Lexeme, Mark, tokens};
+    use super::tokens;
+    use crate::expr::token::{Lexeme, Mark};
     use crate::expr::{Name, Span};
 
     fn kinds(text: &str) -> Vec<Lexeme> {

@@ -1,7 +1,9 @@
 //! One language for all mathematics: grammar, parser, expression graph, exact derivatives, block kernel.
 
 pub mod ast;
+mod blame;
 pub mod caret;
+mod climb;
 pub mod error;
 pub mod function;
 mod lexer;
@@ -9,6 +11,8 @@ pub mod name;
 pub mod nearest;
 pub mod parse;
 mod print;
+mod sorts;
+mod token;
 
 pub use ast::{Ast, Kind, Operator, Relation, Span};
 pub use caret::{caret, picture};
