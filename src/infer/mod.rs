@@ -1,5 +1,17 @@
 //! Covariances, multipliers, score, likelihood-ratio and Wald tests, warnings.
 
+mod error;
+mod kind;
+mod options;
+mod tail;
+mod test;
+mod warning;
+
+pub use error::InferError;
+pub use options::{Options, Tests};
+pub use test::Test;
+pub use warning::Warning;
+
 use crate::likelihood::Information;
 use crate::math::Matrix;
 use crate::restriction::Role;
@@ -41,21 +53,10 @@ pub struct Multiplier {
     pub p: Option<f64>,
     /// left - right at the unrestricted estimate.
     pub gap: Option<f64>,
-    /// Why values are missing.
+    /// Why value, se, z or p are missing.
     pub reason: Option<String>,
-}
-
-/// A chi-square test.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Test {
-    /// The statistic.
-    pub chi_square: f64,
-    /// Degrees of freedom.
-    pub df: usize,
-    /// Upper-tail probability.
-    pub p: f64,
-    /// Its decimal logarithm, finite also where p underflows.
-    pub log10_p: f64,
+    /// Why the gap is missing.
+    pub gap_reason: Option<String>,
 }
 
 /// One fit with what is inferred from it.
@@ -75,23 +76,17 @@ pub struct Block {
     pub reason: Option<String>,
 }
 
-/// A warning with its stable code.
-#[derive(Debug, Clone, PartialEq, Eq)]
-pub struct Warning {
-    /// Stable code, such as `few-rows`.
-    pub code: &'static str,
-    /// A sentence.
-    pub message: String,
-}
-
 /// All that is inferred from one problem. A test that cannot be given is an `Err` with the reason.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Outcome {
     /// Which information the tests and covariances use.
     pub information: Information,
+    /// Confidence of the intervals.
+    pub confidence: f64,
     /// Restricted fit.
     pub restricted: Block,
-    /// Unrestricted fit; `Err` with the reason when it was not made or failed.
+    /// Unrestricted fit; `Err` with the reason when it was not made. One that failed is there with its verdict and no
+    /// estimates.
     pub unrestricted: Result<Block, String>,
     /// Score test.
     pub score: Result<Test, String>,

@@ -1,0 +1,247 @@
+//! The result as text: answers to questions, in the order in which a reader has them.
+
+use super::estimates;
+use super::number::{count, probability, short, tiny};
+use super::words::{how_often, list, stance, wrap};
+use super::{CAUTION, Document, failure};
+use crate::infer::{Block, Multiplier, Outcome, Test};
+use crate::likelihood::Information;
+use crate::restriction::Role;
+use crate::solve::Verdict;
+
+/// The whole text.
+pub fn render(document: &Document) -> String {
+    let block = &document.outcome.restricted;
+    let mut out = Vec::new();
+    out.push(fitted(document));
+    if block.fit.certificate.verdict == Verdict::StrictMaximum {
+        out.push(estimates::section(document));
+        out.push(restrictions(block));
+        out.push(tests(&document.outcome));
+        out.push(certificate(block));
+    } else {
+        out.push(failure::section(document));
+    }
+    out.push(cautions(&document.outcome));
+    out.retain(|part| !part.is_empty());
+    out.join("\n")
+}
+
+fn fitted(document: &Document) -> String {
+    let Document { group, data, model, outcome } = document;
+    let mut out = String::new();
+    if !model.title.is_empty() {
+        out.push_str(&wrap(&model.title, 0, false));
+    }
+    if let Some(pairs) = group {
+        let pairs: Vec<String> = pairs.iter().map(|(column, label)| format!("{column} {label}")).collect();
+        out.push_str(&wrap(&format!("group: {}", pairs.join(", ")), 0, true));
+    }
+    if !out.is_empty() {
+        out.push('\n');
+    }
+    out.push_str("What was fitted?\n");
+    out.push_str(&wrap(&format!("{}.", model.sentence), 2, true));
+    let source = match data.file.as_deref() {
+        None => "There are no data".to_string(),
+        Some("-") => format!("{} from standard input", count(data.rows_used, "row")),
+        Some(file) => format!("{} of {file}", count(data.rows_used, "row")),
+    };
+    let weight = if data.weight_total == data.rows_used as f64 || data.file.is_none() {
+        String::new()
+    } else {
+        format!(", total weight {}", short(data.weight_total, 7))
+    };
+    let dropped = if data.rows_dropped > 0 {
+        format!(" ({} read, {} left out)", data.rows_read, data.rows_dropped)
+    } else {
+        String::new()
+    };
+    let (tested, held) = {
+        let all = &outcome.restricted.multipliers;
+        let tested = all.iter().filter(|m| m.role == Role::Tested).count();
+        (tested, all.len() - tested)
+    };
+    let imposed = match (held, tested) {
+        (0, 0) => "no restrictions".to_string(),
+        (0, t) => format!("{} put to the test", count(t, "restriction")),
+        (h, 0) => format!("{} always imposed, none put to the test", count(h, "restriction")),
+        (h, t) => format!("{} always imposed and {t} put to the test", count(h, "restriction")),
+    };
+    let parameters = count(model.parameters.len(), "parameter");
+    out.push_str(&wrap(&format!("{source}{weight}{dropped}; {parameters}, {imposed}."), 2, true));
+    out
+}
+
+fn restrictions(block: &Block) -> String {
+    let mut out = String::new();
+    let tested: Vec<&Multiplier> = block.multipliers.iter().filter(|m| m.role == Role::Tested).collect();
+    let held: Vec<&Multiplier> = block.multipliers.iter().filter(|m| m.role != Role::Tested).collect();
+    if !tested.is_empty() {
+        out.push_str("How hard do the data pull at each tested restriction?\n");
+        for m in tested {
+            out.push_str(&wrap(&format!("{}: {}", m.name, m.equation), 2, true));
+            out.push_str(&pull(m));
+        }
+    }
+    if !held.is_empty() {
+        if !out.is_empty() {
+            out.push('\n');
+        }
+        out.push_str("Which restrictions are always imposed?\n");
+        for m in held {
+            out.push_str(&wrap(&format!("{}: {}", m.name, m.equation), 2, true));
+            let by = if m.role == Role::Family { "brought by the family" } else { "maintained" };
+            let line = match m.value {
+                Some(value) => format!("pull {}, {by}, not tested", short(value, 4)),
+                None => format!("{by}; {}", m.reason.as_deref().unwrap_or("its pull is not known")),
+            };
+            out.push_str(&wrap(&line, 4, true));
+        }
+    }
+    out
+}
+
+/// The two lines under a tested restriction.
+fn pull(m: &Multiplier) -> String {
+    let Some(value) = m.value else {
+        let reason = m.reason.as_deref().unwrap_or("its pull is not known");
+        return wrap(&format!("no pull: {reason}"), 4, true);
+    };
+    let first = match (m.se, m.z, m.p) {
+        (Some(se), Some(z), Some(p)) => format!(
+            "pull {}, standard error {}, {} times it, p {}",
+            short(value, 4),
+            short(se, 4),
+            short(z.abs(), 2),
+            probability(p, p.log10())
+        ),
+        _ => {
+            let reason = m.reason.as_deref().unwrap_or("not available");
+            format!("pull {}, without a standard error: {reason}", short(value, 4))
+        }
+    };
+    let side = if value > 0.0 { "larger" } else { "smaller" };
+    let weak = m.z.is_some_and(|z| z.abs() < 1.0);
+    let mut second = match value {
+        0.0 => "the data pull neither way".to_string(),
+        _ if weak => format!("the data want the left side {side}, by less than the pull's own standard error"),
+        _ => format!("the data want the left side {side}"),
+    };
+    if let Some(gap) = m.gap {
+        let size = short(gap.abs(), 4);
+        second.push_str(&match gap {
+            g if g > 0.0 => format!("; let free, it would be {size} above the right side"),
+            g if g < 0.0 => format!("; let free, it would be {size} below the right side"),
+            _ => "; let free, both sides would be equal".to_string(),
+        });
+    }
+    wrap(&first, 4, true) + &wrap(&second, 4, true)
+}
+
+fn tests(outcome: &Outcome) -> String {
+    if outcome.restricted.multipliers.iter().all(|m| m.role != Role::Tested) {
+        return String::new();
+    }
+    let mut out = String::from("Do the data accept the tested restrictions?\n");
+    let all = [("score test", &outcome.score), ("likelihood ratio", &outcome.lr), ("Wald test", &outcome.wald)];
+    if let Some((name, test)) = all.iter().find_map(|(name, test)| test.as_ref().ok().map(|t| (name, t))) {
+        let often = how_often(test.p);
+        let sentence = format!(
+            "{} Were they true, data this far from them or farther would come up {often} (by the {name}).",
+            stance(test.p)
+        );
+        out.push_str(&wrap(&sentence, 2, false));
+    }
+    for (name, test) in all {
+        let line = match test {
+            Ok(test) => format!("{name}: {}", statistic(test)),
+            Err(reason) => format!("{name}: none, {reason}"),
+        };
+        out.push_str(&wrap(&line, 2, true));
+    }
+    let kind = match outcome.information {
+        Information::Expected => "expected information (averaged over what might have been observed)",
+        Information::Observed => "observed information (the curvature of this very likelihood)",
+        Information::Outer => "outer-product information (the spread of the rows' slopes)",
+        Information::Robust => "the robust form (which does not rely on the family being right)",
+    };
+    out.push_str(&wrap(&format!("Standard errors, score and Wald tests use {kind}."), 2, false));
+    out
+}
+
+fn statistic(test: &Test) -> String {
+    format!(
+        "chi-square {} on {}, p {}",
+        short(test.chi_square, 4),
+        if test.df == 1 { "1 degree of freedom".into() } else { format!("{} degrees of freedom", test.df) },
+        probability(test.p, test.log10_p)
+    )
+}
+
+fn certificate(block: &Block) -> String {
+    let c = &block.fit.certificate;
+    let mut out = String::from("Can this answer be believed?\n");
+    let mut say = vec!["It is a strict local maximum of the likelihood under the restrictions.".to_string()];
+    say.push(format!("The log-likelihood is {}.", short(block.fit.log_likelihood, 8)));
+    if c.restrictions > 0 {
+        let rank = if c.rank == c.restrictions {
+            format!("{} independent", if c.rank == 1 { "it is".to_string() } else { format!("all {} are", c.rank) })
+        } else {
+            format!("{} of {} are independent", c.rank, c.restrictions)
+        };
+        let condition = c.condition.map_or_else(String::new, |k| format!(" (condition {})", short(k, 2)));
+        let one = c.restrictions == 1;
+        say.push(format!(
+            "{} to {}, and {rank}{condition}.",
+            if one { "The restriction holds" } else { "The restrictions hold" },
+            tiny(c.feasibility)
+        ));
+    }
+    say.push(format!("What slope is left is {} on the scale of standard errors.", tiny(c.stationarity)));
+    say.push(match (c.curvature_min, c.curvature_max) {
+        (Some(low), Some(high)) => format!(
+            "The likelihood falls off in every free direction (scaled curvature {} to {}).",
+            short(low, 2),
+            short(high, 2)
+        ),
+        _ => "The restrictions leave no direction free, so there is nothing to fall off in.".to_string(),
+    });
+    say.push(format!("Exact and difference derivatives agree to {}.", tiny(c.derivatives)));
+    say.push(match c.starts {
+        1 => "One start was made.".to_string(),
+        starts => format!("Of {starts} starts, {} reached the best value.", c.starts_at_best),
+    });
+    if c.maxima.len() > 1 {
+        let others: Vec<String> = c.maxima[1..].iter().map(|&x| short(x, 8)).collect();
+        let others: Vec<&str> = others.iter().map(String::as_str).collect();
+        say.push(format!("Other maxima were met, with log-likelihood {}.", list(&others, 4)));
+    }
+    match c.second_opinion {
+        Some(true) => say.push("A different method from a different start found the same optimum.".to_string()),
+        Some(false) => say.push("A different method from a different start did NOT find the same optimum.".to_string()),
+        None => {}
+    }
+    out.push_str(&wrap(&say.join(" "), 2, false));
+    for note in &c.notes {
+        out.push_str(&wrap(note, 2, true));
+    }
+    out
+}
+
+fn cautions(outcome: &Outcome) -> String {
+    let mut out = String::from("What should be kept in mind?\n");
+    for warning in &outcome.warnings {
+        let mut message = warning.message.clone();
+        if let Some(first) = message.get(..1) {
+            let upper = first.to_uppercase();
+            // Names keep their case: only a lower-case English word is made to begin a sentence.
+            if message.split_whitespace().next().is_some_and(|word| word.chars().all(|c| c.is_ascii_lowercase())) {
+                message.replace_range(..1, &upper);
+            }
+        }
+        out.push_str(&wrap(&format!("{message} ({}).", warning.code), 2, true));
+    }
+    out.push_str(&wrap(CAUTION, 2, false));
+    out
+}
