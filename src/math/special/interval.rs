@@ -1,0 +1,80 @@
+//! The logarithm of the probability that a standard normal falls between two values.
+
+use super::normal::{inverse_mills, normal_cdf, normal_log_cdf, normal_log_density};
+use libm::{erf, exp, log, log1p};
+use std::f64::consts::FRAC_1_SQRT_2;
+
+/// Nodes and weights of Gauss-Legendre quadrature with 12 points on [-1, 1], positive half (Abramowitz and Stegun 25.4.29
+/// to more digits).
+const LEGENDRE: [(f64, f64); 6] = [
+    (0.98156063424671925069, 0.047175336386511827195),
+    (0.90411725637047485668, 0.10693932599531843096),
+    (0.76990267419430468704, 0.16007832854334622633),
+    (0.5873179542866174473, 0.20316742672306592175),
+    (0.36783149899818019375, 0.23349253653835480876),
+    (0.12523340851146891547, 0.249147045813402785),
+];
+
+/// log(Phi(b) - Phi(a)) for a <= b, infinite ends allowed; minus infinity at a = b, NaN for a > b.
+///
+/// Relative error 1e-14 or better wherever the value is not within rounding of zero: in either tail, across zero, and for
+/// intervals of any width, down to neighbouring doubles.
+pub fn normal_log_interval(a: f64, b: f64) -> f64 {
+    if a > b || a.is_nan() || b.is_nan() {
+        return f64::NAN;
+    }
+    if a == b {
+        return f64::NEG_INFINITY;
+    }
+    if a < 0.0 && b > 0.0 {
+        let outside = normal_cdf(a) + normal_cdf(-b);
+        if outside < 0.5 {
+            return log1p(-outside);
+        }
+        return log(0.5 * (erf(b * FRAC_1_SQRT_2) - erf(a * FRAC_1_SQRT_2)));
+    }
+    // Both on one side: measure from the end nearer zero.
+    let (near, far) = if a >= 0.0 { (a, b) } else { (-b, -a) };
+    if far == f64::INFINITY {
+        return normal_log_cdf(-near);
+    }
+    normal_log_density(near) + log(share(near, far))
+}
+
+/// The slopes (d/da, d/db) of [`normal_log_interval`]: -phi(a) and phi(b) over the probability between, without the loss
+/// that a difference of logarithms has far in the tails.
+pub fn normal_interval_slopes(a: f64, b: f64) -> (f64, f64) {
+    if a >= b || a.is_nan() || b.is_nan() {
+        return (f64::NAN, f64::NAN);
+    }
+    if a < 0.0 && b > 0.0 {
+        let log_p = normal_log_interval(a, b);
+        return (-exp(normal_log_density(a) - log_p), exp(normal_log_density(b) - log_p));
+    }
+    let (near, far) = if a >= 0.0 { (a, b) } else { (-b, -a) };
+    let (at_near, at_far) = if far == f64::INFINITY {
+        (inverse_mills(-near), 0.0)
+    } else {
+        let share = share(near, far);
+        (1.0 / share, exp(-(far - near) * (0.5 * (near + far))) / share)
+    };
+    if a >= 0.0 { (-at_near, at_far) } else { (-at_far, at_near) }
+}
+
+/// (Phi(far) - Phi(near)) / phi(near) = integral of exp(-near t - t^2/2) over t in [0, far - near], for 0 <= near < far.
+fn share(near: f64, far: f64) -> f64 {
+    let width = far - near;
+    let drop = width * (0.5 * (near + far));
+    if drop > 1.0 {
+        // The two Mills ratios differ by a factor e at least: no digits lost.
+        return 1.0 / inverse_mills(-near) - exp(-drop) / inverse_mills(-far);
+    }
+    // The integrand falls by a factor e at most: twelve points are exact to rounding, and every term is positive.
+    let half = 0.5 * width;
+    let at = |t: f64| exp(-t * (near + 0.5 * t));
+    let mut sum = 0.0;
+    for (x, w) in LEGENDRE {
+        sum += w * (at(half * (1.0 + x)) + at(half * (1.0 - x)));
+    }
+    half * sum
+}
