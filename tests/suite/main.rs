@@ -4,4 +4,8 @@
 #[path = "../generate/tiles.rs"]
 mod tiles;
 
+mod harness;
+
 mod datasets;
+mod layers;
+mod worked_examples;
