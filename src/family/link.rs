@@ -1,5 +1,7 @@
 //! Links between a row parameter and its linear predictor.
 
+use crate::math::special;
+
 /// A link function.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Link {
@@ -41,10 +43,7 @@ impl Link {
             Link::Identity => value,
             Link::Log => value.ln(),
             Link::Logit => (value / (1.0 - value)).ln(),
-            Link::Probit => {
-                use statrs::distribution::ContinuousCDF;
-                statrs::distribution::Normal::standard().inverse_cdf(value)
-            }
+            Link::Probit => special::normal_quantile(value),
             Link::ComplementaryLogLog => (-(-value).ln_1p()).ln(),
         }
     }

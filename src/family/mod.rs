@@ -1,8 +1,14 @@
 //! The library of likelihoods: each one room, described as data.
 
+pub mod binomial;
+pub mod exponential;
 pub mod link;
+pub mod listing;
+pub mod normal;
+pub mod poisson;
 
 pub use link::Link;
+pub use listing::Listing;
 
 use crate::math::Range;
 
@@ -84,4 +90,14 @@ pub struct Moments {
     pub min: f64,
     /// Largest value.
     pub max: f64,
+}
+
+/// The table: a new family is a room of its own and a row here.
+pub const FAMILIES: &[&Family] = &[&binomial::BINOMIAL, &exponential::EXPONENTIAL, &normal::NORMAL, &poisson::POISSON];
+
+impl Family {
+    /// The family of this name.
+    pub fn named(name: &str) -> Option<&'static Family> {
+        FAMILIES.iter().copied().find(|f| f.name == name)
+    }
 }

@@ -1,0 +1,52 @@
+//! The value of each function at plain numbers.
+
+use super::Function;
+use crate::math::special;
+
+impl Function {
+    /// The value at these arguments; NaN outside the domain. The table fixes how many there are.
+    pub fn value(self, x: &[f64]) -> f64 {
+        let a = x[0];
+        match self {
+            Function::Exp => libm::exp(a),
+            Function::Log => libm::log(a),
+            Function::Log1p => libm::log1p(a),
+            Function::Expm1 => libm::expm1(a),
+            Function::Sqrt => a.sqrt(),
+            Function::Sin => libm::sin(a),
+            Function::Cos => libm::cos(a),
+            Function::Tan => libm::tan(a),
+            Function::Asin => libm::asin(a),
+            Function::Acos => libm::acos(a),
+            Function::Atan => libm::atan(a),
+            Function::Sinh => libm::sinh(a),
+            Function::Cosh => libm::cosh(a),
+            Function::Tanh => libm::tanh(a),
+            Function::Logistic => special::logistic(a),
+            Function::Logit => special::logit(a),
+            Function::Lgamma => special::lgamma(a),
+            Function::Digamma => special::digamma(a),
+            Function::BesselI => special::bessel_i(a, x[1]),
+            Function::Erf => special::erf(a),
+            Function::Erfc => special::erfc(a),
+            Function::NormalCdf => special::normal_cdf(a),
+            Function::NormalLogCdf => special::normal_log_cdf(a),
+            Function::LogSumExp => special::log_sum_exp(x),
+            Function::Abs => a.abs(),
+            Function::Min => x.iter().fold(a, |m, &v| if v < m || v.is_nan() { v } else { m }),
+            Function::Max => x.iter().fold(a, |m, &v| if v > m || v.is_nan() { v } else { m }),
+            Function::LogLogistic => special::log_logistic(a),
+            Function::Log1mexp => special::log1mexp(a),
+            Function::NormalLogInterval => special::normal_log_interval(a, x[1]),
+            Function::Polygamma => special::polygamma(a as u32, x[1]),
+            Function::LogMix => {
+                let top = x.iter().skip(1).step_by(2).copied().fold(f64::NEG_INFINITY, f64::max);
+                if top == f64::NEG_INFINITY {
+                    return top;
+                }
+                let total: f64 = x.chunks_exact(2).map(|p| p[0] * libm::exp(p[1] - top)).sum();
+                top + libm::log(total)
+            }
+        }
+    }
+}

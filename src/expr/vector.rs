@@ -1,0 +1,223 @@
+//! Branch-free loops over a block: exponential, logarithm and what is built of them, sums and dot products.
+//!
+//! Arguments outside the range of the fast path (overflow, subnormal, NaN) are done again one by one with `libm`. At most one
+//! unit in the last place from the exact value on the fast path.
+
+/// Partial sums of a reduction. Their number and order are part of the result, so it is the same on every machine.
+pub(super) const LANES: usize = 16;
+
+const LOG2_E: f64 = std::f64::consts::LOG2_E;
+/// log 2 in two parts, the first with zeros at the end so that k * LN2_HIGH is exact
+const LN2_HIGH: f64 = 6.931_471_803_691_238_16e-1;
+const LN2_LOW: f64 = 1.908_214_929_270_587_70e-10;
+/// Adding and subtracting it rounds to a whole number.
+const ROUND: f64 = 6_755_399_441_055_744.0;
+
+/// exp on [-708, 709]; anything else gives an arbitrary number.
+#[inline(always)]
+pub(super) fn exp_fast(x: f64) -> f64 {
+    let shifted = x * LOG2_E + ROUND;
+    let k = shifted - ROUND;
+    let r = (x - k * LN2_HIGH) - k * LN2_LOW;
+    // Taylor polynomial on |r| <= log(2) / 2: the rest is below 5e-18
+    let r2 = r * r;
+    let r4 = r2 * r2;
+    let p01 = 0.5 + r * (1.0 / 6.0);
+    let p23 = 1.0 / 24.0 + r * (1.0 / 120.0);
+    let p45 = 1.0 / 720.0 + r * (1.0 / 5_040.0);
+    let p67 = 1.0 / 40_320.0 + r * (1.0 / 362_880.0);
+    let p89 = 1.0 / 3_628_800.0 + r * (1.0 / 39_916_800.0);
+    let pab = 1.0 / 479_001_600.0 + r * (1.0 / 6_227_020_800.0);
+    let low = p01 + r2 * p23;
+    let mid = p45 + r2 * p67;
+    let high = p89 + r2 * pab;
+    let p = low + r4 * (mid + r4 * high);
+    let e = 1.0 + (r + r2 * p);
+    // the low bits of `shifted` hold k; two steps keep the factor in range at both ends
+    let k = (shifted.to_bits() << 52).wrapping_add(1023 << 52);
+    e * f64::from_bits(k)
+}
+
+#[inline(always)]
+fn exp_is_fast(x: f64) -> bool {
+    (-708.0..=709.0).contains(&x)
+}
+
+#[inline(always)]
+pub(super) fn exp_block(out: &mut [f64], a: &[f64]) {
+    let mut all = true;
+    for (o, &x) in out.iter_mut().zip(a) {
+        *o = exp_fast(x);
+        all &= exp_is_fast(x);
+    }
+    if !all {
+        for (o, &x) in out.iter_mut().zip(a) {
+            if !exp_is_fast(x) {
+                *o = libm::exp(x);
+            }
+        }
+    }
+}
+
+#[inline(always)]
+fn log_is_fast(x: f64) -> bool {
+    (f64::MIN_POSITIVE..f64::INFINITY).contains(&x)
+}
+
+/// Exponent (as a double) and mantissa in [sqrt(1/2), sqrt(2)) of a positive normal number.
+#[inline(always)]
+fn parts(x: f64) -> (f64, f64) {
+    const HALF_ROOT: u64 = 0x3fe6_a09e_667f_3bcd;
+    let bits = x.to_bits();
+    let e = bits.wrapping_sub(HALF_ROOT).wrapping_add(0x4000_0000_0000_0000) >> 52;
+    let m = f64::from_bits(bits.wrapping_sub(e.wrapping_sub(0x400) << 52));
+    // a small whole number to a double by way of the bits of 2^52 + e
+    let k = f64::from_bits(0x4330_0000_0000_0000 | e) - 4_503_599_627_371_520.0;
+    (k, m)
+}
+
+/// log of a positive normal number; anything else gives an arbitrary number.
+#[inline(always)]
+pub(super) fn log_fast(x: f64) -> f64 {
+    let (k, m) = parts(x);
+    let f = m - 1.0;
+    let s = f / (2.0 + f);
+    let z = s * s;
+    let w = z * z;
+    // coefficients of the minimax polynomial for (log(1 + s) - log(1 - s) - 2 s) / s on |s| <= 0.1716
+    let t1 = w * (3.999_999_999_940_941_908e-1 + w * (2.222_219_843_214_978_396e-1 + w * 1.531_383_769_920_937_332e-1));
+    let t2 = z
+        * (6.666_666_666_666_735_13e-1
+            + w * (2.857_142_874_366_239_149e-1
+                + w * (1.818_357_216_161_805_012e-1 + w * 1.479_819_860_511_658_591e-1)));
+    let r = t1 + t2;
+    let h = 0.5 * f * f;
+    k * LN2_HIGH - ((h - (s * (h + r) + k * LN2_LOW)) - f)
+}
+
+#[inline(always)]
+pub(super) fn log_block(out: &mut [f64], a: &[f64]) {
+    let mut all = true;
+    for (o, &x) in out.iter_mut().zip(a) {
+        *o = log_fast(x);
+        all &= log_is_fast(x);
+    }
+    if !all {
+        for (o, &x) in out.iter_mut().zip(a) {
+            if !log_is_fast(x) {
+                *o = libm::log(x);
+            }
+        }
+    }
+}
+
+#[inline(always)]
+pub(super) fn logistic_block(out: &mut [f64], a: &[f64]) {
+    for (o, &x) in out.iter_mut().zip(a) {
+        // exp(709) is finite: beyond it the result is 0 or 1 to rounding, clamping keeps NaN
+        let e = exp_fast(-x.clamp(-708.0, 708.0));
+        *o = if x.is_nan() { x } else { 1.0 / (1.0 + e) };
+    }
+}
+
+/// log(logistic(x)) = min(x, 0) - log(1 + exp(-|x|))
+#[inline(always)]
+pub(super) fn log1p_exp_block(out: &mut [f64], a: &[f64]) {
+    for (o, &x) in out.iter_mut().zip(a) {
+        let u = exp_fast(-x.abs().min(708.0));
+        let w = 1.0 + u;
+        // the rounding of 1 + u is put back
+        let l = log_fast(w) + (u - (w - 1.0)) / w;
+        let low = if x < 0.0 { x } else { 0.0 };
+        *o = if x.is_nan() { x } else { low - l };
+    }
+}
+
+#[inline(always)]
+fn reduce(lanes: &[f64; LANES]) -> f64 {
+    let mut l = *lanes;
+    let mut width = LANES / 2;
+    while width > 0 {
+        for i in 0..width {
+            l[i] += l[i + width];
+        }
+        width /= 2;
+    }
+    l[0]
+}
+
+#[inline(always)]
+pub(super) fn sum(a: &[f64]) -> f64 {
+    let mut lanes = [0.0; LANES];
+    let mut chunks = a.chunks_exact(LANES);
+    for c in &mut chunks {
+        for i in 0..LANES {
+            lanes[i] += c[i];
+        }
+    }
+    for (l, &x) in lanes.iter_mut().zip(chunks.remainder()) {
+        *l += x;
+    }
+    reduce(&lanes)
+}
+
+#[inline(always)]
+fn dot_with(a: &[f64], b: &[f64], f: impl Fn(f64, f64) -> f64) -> f64 {
+    let mut lanes = [0.0; LANES];
+    let (mut x, mut y) = (a.chunks_exact(LANES), b.chunks_exact(LANES));
+    for (c, d) in (&mut x).zip(&mut y) {
+        for i in 0..LANES {
+            lanes[i] += f(c[i], d[i]);
+        }
+    }
+    for (i, (&c, &d)) in x.remainder().iter().zip(y.remainder()).enumerate() {
+        lanes[i] += f(c, d);
+    }
+    reduce(&lanes)
+}
+
+#[inline(always)]
+pub(super) fn dot(a: &[f64], b: &[f64]) -> f64 {
+    dot_with(a, b, |x, y| x * y)
+}
+
+#[inline(always)]
+pub(super) fn dot_zero(a: &[f64], b: &[f64]) -> f64 {
+    dot_with(a, b, |x, y| {
+        let p = x * y;
+        if p.is_nan() && !x.is_nan() && !y.is_nan() { 0.0 } else { p }
+    })
+}
+
+/// Sum of logarithms: mantissas are multiplied, exponents added, one logarithm a lane is taken at the end.
+#[inline(always)]
+pub(super) fn sum_log(a: &[f64]) -> f64 {
+    let mut all = true;
+    for &x in a {
+        all &= log_is_fast(x);
+    }
+    if !all {
+        return a.iter().map(|&x| libm::log(x)).sum();
+    }
+    let mut product = [1.0; LANES];
+    let mut exponent = [0.0; LANES];
+    let mut chunks = a.chunks_exact(LANES);
+    for c in &mut chunks {
+        for i in 0..LANES {
+            let (k, m) = parts(c[i]);
+            product[i] *= m;
+            exponent[i] += k;
+        }
+    }
+    for (i, &x) in chunks.remainder().iter().enumerate() {
+        let (k, m) = parts(x);
+        product[i] *= m;
+        exponent[i] += k;
+    }
+    // a block has at most 33 factors a lane, each within [0.7, 1.42): the product stays within 1e-6 and 1e6
+    let mut lanes = [0.0; LANES];
+    for i in 0..LANES {
+        lanes[i] = exponent[i] * LN2_HIGH + (libm::log(product[i]) + exponent[i] * LN2_LOW);
+    }
+    reduce(&lanes)
+}
