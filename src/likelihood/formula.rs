@@ -1,0 +1,121 @@
+//! The programs of one kind of row: value, gradient, Hessian and the two sums of information, compiled from one graph.
+
+use crate::expr::{Graph, Id, Layout, Output, Program, Variable, compile, preparation};
+
+/// Where an entry of a gradient or a symmetric matrix comes from.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Slot {
+    /// It is zero for every row and every parameter.
+    Zero,
+    /// A sum output of the program.
+    Sum(usize),
+    /// A row output of the program, to be multiplied into design columns.
+    Row(usize),
+}
+
+/// A program with what its outputs are. Variables are numbered: parameters first, then predictors.
+#[derive(Debug, Clone, Default)]
+pub(super) struct Pass {
+    pub(super) program: Program,
+    /// Whether sum output 0 is the log-likelihood.
+    pub(super) value: bool,
+    /// One a variable; empty if not asked for.
+    pub(super) first: Vec<Slot>,
+    /// (variable, variable not before it, slot); zero ones left out.
+    pub(super) second: Vec<(usize, usize, Slot)>,
+}
+
+/// All passes over one kind of row.
+#[derive(Debug, Clone, Default)]
+pub(super) struct Formula {
+    pub(super) value: Pass,
+    pub(super) gradient: Pass,
+    pub(super) hessian: Pass,
+    pub(super) expected: Option<Pass>,
+    pub(super) outer: Pass,
+    pub(super) layout: Layout,
+    /// Computes the layout's columns and fixed sums, from raw columns.
+    pub(super) preparation: Program,
+    /// Raw columns that the preparation reads, by slot of its store.
+    pub(super) raw: Vec<u32>,
+}
+
+/// What a formula is compiled from.
+pub(super) struct Ingredients {
+    pub(super) graph: Graph,
+    /// log f of a row.
+    pub(super) log_density: Id,
+    /// Variables to differentiate by: parameters, then predictors.
+    pub(super) variables: Vec<Variable>,
+    /// Expected information of a row between variables, where the family has it: (variable, variable, node).
+    pub(super) expected: Option<Vec<(usize, usize, Id)>>,
+    pub(super) weighted: bool,
+}
+
+struct Compiler<'a> {
+    graph: &'a mut Graph,
+    layout: Layout,
+    variables: &'a [Variable],
+    weighted: bool,
+}
+
+impl Compiler<'_> {
+    fn pass(&mut self, value: Option<Id>, first: &[Id], second: &[(usize, usize, Id)]) -> Pass {
+        let mut outputs: Vec<Output> = value.into_iter().map(Output::Sum).collect();
+        let (mut sums, mut rows) = (outputs.len(), 0);
+        let by_row = |v: usize, variables: &[Variable]| matches!(variables[v], Variable::Predictor(_));
+        let mut slot = |graph: &Graph, id: Id, by_row: bool| {
+            if graph.as_constant(id) == Some(0.0) {
+                return Slot::Zero;
+            }
+            if by_row {
+                outputs.push(Output::Row(id));
+                rows += 1;
+                Slot::Row(rows - 1)
+            } else {
+                outputs.push(Output::Sum(id));
+                sums += 1;
+                Slot::Sum(sums - 1)
+            }
+        };
+        let first: Vec<Slot> =
+            first.iter().enumerate().map(|(v, &id)| slot(self.graph, id, by_row(v, self.variables))).collect();
+        let second: Vec<(usize, usize, Slot)> = second
+            .iter()
+            .map(|&(u, v, id)| {
+                (u, v, slot(self.graph, id, by_row(u, self.variables) || by_row(v, self.variables)))
+            })
+            .filter(|s| s.2 != Slot::Zero)
+            .collect();
+        let predictors = self.variables.iter().filter(|v| matches!(v, Variable::Predictor(_))).count();
+        let program = compile(self.graph, &mut self.layout, &outputs, predictors, self.weighted);
+        Pass { program, value: value.is_some(), first, second }
+    }
+}
+
+impl Formula {
+    /// Differentiates and compiles.
+    pub(super) fn compile(ingredients: Ingredients) -> Formula {
+        let Ingredients { mut graph, log_density, variables, expected, weighted } = ingredients;
+        let n = variables.len();
+        let first: Vec<Id> = variables.iter().map(|&v| graph.derivative(log_density, v)).collect();
+        let mut second = Vec::with_capacity(n * (n + 1) / 2);
+        let mut outer = Vec::with_capacity(n * (n + 1) / 2);
+        for u in 0..n {
+            for v in u..n {
+                second.push((u, v, graph.derivative(first[u], variables[v])));
+                outer.push((u, v, graph.multiply(first[u], first[v])));
+            }
+        }
+        let mut c = Compiler { graph: &mut graph, layout: Layout::default(), variables: &variables, weighted };
+        let value = c.pass(Some(log_density), &[], &[]);
+        let gradient = c.pass(Some(log_density), &first, &[]);
+        let hessian = c.pass(Some(log_density), &first, &second);
+        let expected = expected.map(|e| c.pass(None, &[], &e));
+        let outer = c.pass(None, &[], &outer);
+        let layout = c.layout;
+        let (preparation, raw) = preparation(&mut graph, &layout, weighted);
+        let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&graph, slot)).collect();
+        Formula { value, gradient, hessian, expected, outer, layout, preparation, raw }
+    }
+}
