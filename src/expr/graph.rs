@@ -343,7 +343,7 @@ impl Graph {
 
     /// Product of base ^ exponent.
     pub fn product(&mut self, factors: &[(Id, f64)]) -> Id {
-        let mut scale = 1.0;
+        let (mut scale, mut zero) = (1.0, false);
         let mut flat: Vec<(Id, f64)> = Vec::with_capacity(factors.len());
         let mut todo: Vec<(Id, f64)> = factors.iter().rev().copied().collect();
         while let Some((id, e)) = todo.pop() {
@@ -351,7 +351,11 @@ impl Graph {
                 continue;
             }
             match self.node(id) {
-                Node::Constant(x) => scale *= power(x.get(), e),
+                Node::Constant(x) => {
+                    let x = power(x.get(), e);
+                    zero |= x == 0.0;
+                    scale *= x;
+                }
                 Node::Sum(c, t) if c.get() == 0.0 && t.len() == 1 && (is_whole(e) || t[0].1.get() > 0.0) => {
                     scale *= power(t[0].1.get(), e);
                     todo.push((t[0].0, e));
@@ -367,7 +371,7 @@ impl Graph {
                 _ => flat.push((id, e)),
             }
         }
-        if scale == 0.0 {
+        if scale == 0.0 || zero {
             return self.constant(0.0);
         }
         flat.sort_by_key(|t| t.0);

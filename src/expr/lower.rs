@@ -483,7 +483,10 @@ impl Lower<'_> {
             Unit::Node(id) => match self.graph.node(id) {
                 Node::Call(Function::Log, a) => self.graph.sign(a[0]) != Sign::Positive,
                 Node::Call(Function::Log1p | Function::Logit, _) => true,
-                Node::Product(f) => f.iter().any(|&(i, e)| e.get() < 0.0 && self.graph.sign(i) != Sign::Positive),
+                Node::Product(f) => f.iter().any(|&(i, e)| {
+                    (e.get() < 0.0 && self.graph.sign(i) != Sign::Positive) || self.may_be_infinite(Unit::Node(i))
+                }),
+                Node::Sum(_, t) => t.iter().any(|&(i, _)| self.may_be_infinite(Unit::Node(i))),
                 _ => false,
             },
         }

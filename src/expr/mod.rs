@@ -2,6 +2,8 @@
 
 pub mod ast;
 mod blame;
+#[cfg(test)]
+mod agreement;
 pub mod build;
 pub mod caret;
 mod climb;
