@@ -1,8 +1,8 @@
 //! Tests that hold the engine together: programs over blocks against one row at a time, derivatives against differences.
 
 use super::{
-    Graph, Id, Layout, Output, Registers, Scalars, Scope, Sign, Store, Variable, blocks, build, compile, parse_expression,
-    preparation,
+    Graph, Id, Layout, Output, Registers, Scalars, Scope, Sign, Store, Variable, blocks, build, compile,
+    parse_expression, preparation,
 };
 
 const TEXTS: &[&str] = &[
@@ -151,7 +151,10 @@ fn derivatives_agree_with_differences() {
                 let (up, down) = (at(i, 1.0), at(i, -1.0));
                 // a central difference with h = 1e-5 is good to about 1e-9 of the values differenced
                 let d = (up[0] - down[0]) / (2.0 * h);
-                assert!((d - exact[1 + i]).abs() < 1e-8 * (1.0 + up[0].abs() + d.abs()), "{text}: first {i} {d} {exact:?}");
+                assert!(
+                    (d - exact[1 + i]).abs() < 1e-8 * (1.0 + up[0].abs() + d.abs()),
+                    "{text}: first {i} {d} {exact:?}"
+                );
                 for &(u, v, k) in &order {
                     if v == i {
                         let d = (up[1 + u] - down[1 + u]) / (2.0 * h);

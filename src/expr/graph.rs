@@ -245,9 +245,12 @@ impl Graph {
                     let signs = a.iter().map(|&i| self.sign(i));
                     if *f == Function::Min { signs.min() } else { signs.max() }.unwrap_or(Unknown)
                 }
-                Function::Expm1 | Function::Log1p | Function::Sinh | Function::Tanh | Function::Erf | Function::Atan => {
-                    self.sign(a[0])
-                }
+                Function::Expm1
+                | Function::Log1p
+                | Function::Sinh
+                | Function::Tanh
+                | Function::Erf
+                | Function::Atan => self.sign(a[0]),
                 _ => Unknown,
             },
             Node::Choice(_, a, b) => self.sign(*a).min(self.sign(*b)),
@@ -307,7 +310,10 @@ impl Graph {
                 return only;
             }
             // 1 + (exp(x) - 1)
-            if total == 1.0 && k == 1.0 && let Node::Call(Function::Expm1, a) = self.node(only) {
+            if total == 1.0
+                && k == 1.0
+                && let Node::Call(Function::Expm1, a) = self.node(only)
+            {
                 let x = a[0];
                 return self.call(Function::Exp, &[x]);
             }
@@ -499,8 +505,20 @@ impl Graph {
     /// Both hold.
     pub fn and(&mut self, a: Id, b: Id) -> Id {
         match (self.as_constant(a), self.as_constant(b)) {
-            (Some(x), _) => if x != 0.0 { b } else { a },
-            (_, Some(y)) => if y != 0.0 { a } else { b },
+            (Some(x), _) => {
+                if x != 0.0 {
+                    b
+                } else {
+                    a
+                }
+            }
+            (_, Some(y)) => {
+                if y != 0.0 {
+                    a
+                } else {
+                    b
+                }
+            }
             _ => self.intern(Node::And(a, b)),
         }
     }
@@ -508,8 +526,20 @@ impl Graph {
     /// One holds at least.
     pub fn or(&mut self, a: Id, b: Id) -> Id {
         match (self.as_constant(a), self.as_constant(b)) {
-            (Some(x), _) => if x != 0.0 { a } else { b },
-            (_, Some(y)) => if y != 0.0 { b } else { a },
+            (Some(x), _) => {
+                if x != 0.0 {
+                    a
+                } else {
+                    b
+                }
+            }
+            (_, Some(y)) => {
+                if y != 0.0 {
+                    b
+                } else {
+                    a
+                }
+            }
             _ => self.intern(Node::Or(a, b)),
         }
     }

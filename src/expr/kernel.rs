@@ -7,9 +7,7 @@ use multiversion::multiversion;
 use super::Function;
 use super::graph::power;
 use super::program::{BLOCK, Block, Gather, Op, Program, Source, Step};
-use super::vector::{
-    LANES, dot, dot_zero, exp_block, log1p_exp_block, log_block, logistic_block, sum, sum_log,
-};
+use super::vector::{LANES, dot, dot_zero, exp_block, log_block, log1p_exp_block, logistic_block, sum, sum_log};
 
 /// Columns of one part of the rows, in blocks.
 #[derive(Debug, Clone, Default)]

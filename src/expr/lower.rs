@@ -60,7 +60,13 @@ struct Lower<'a> {
 }
 
 /// Compiles a program for these outputs; columns and fixed sums it needs are entered in the layout.
-pub fn compile(graph: &mut Graph, layout: &mut Layout, outputs: &[Output], predictors: usize, weighted: bool) -> Program {
+pub fn compile(
+    graph: &mut Graph,
+    layout: &mut Layout,
+    outputs: &[Output],
+    predictors: usize,
+    weighted: bool,
+) -> Program {
     lower(graph, layout, outputs, predictors, weighted, true)
 }
 
@@ -144,8 +150,7 @@ impl Lower<'_> {
             }
         }
         // 2. row products as lists of factors, with shared pairs taken out
-        let (fixed, moving): (Vec<Id>, Vec<Id>) =
-            products.iter().partition(|&&p| self.keep && self.graph.is_fixed(p));
+        let (fixed, moving): (Vec<Id>, Vec<Id>) = products.iter().partition(|&&p| self.keep && self.graph.is_fixed(p));
         let mut roots = moving.clone();
         roots.extend(rows.iter().map(|r| r.1));
         roots.iter().for_each(|&id| self.collect(id));
@@ -254,9 +259,9 @@ impl Lower<'_> {
                 }
             }
             Node::Product(f) if depth < 3 && !self.graph.is_scalar(id) => {
-                let found = f.iter().position(|&(i, e)| {
-                    e == Number::new(1.0) && !self.graph.is_scalar(i) && self.expandable(i)
-                });
+                let found = f
+                    .iter()
+                    .position(|&(i, e)| e == Number::new(1.0) && !self.graph.is_scalar(i) && self.expandable(i));
                 let Some(at) = found else {
                     let (s, r) = self.split(id);
                     out.push((s, scale, r));
@@ -374,8 +379,7 @@ impl Lower<'_> {
     }
 
     fn sum_units(&mut self, product: Id) -> Vec<Unit> {
-        let mut units =
-            if self.graph.as_constant(product) == Some(1.0) { Vec::new() } else { self.units_of(product) };
+        let mut units = if self.graph.as_constant(product) == Some(1.0) { Vec::new() } else { self.units_of(product) };
         if self.weighted {
             units.push(Unit::Weight);
             units.sort();

@@ -1,9 +1,9 @@
 //! One language for all mathematics: grammar, parser, expression graph, exact derivatives, block kernel.
 
-pub mod ast;
-mod blame;
 #[cfg(test)]
 mod agreement;
+pub mod ast;
+mod blame;
 pub mod build;
 pub mod caret;
 mod climb;
@@ -37,7 +37,7 @@ pub use kernel::{Registers, Store, blocks};
 pub use lower::{Layout, compile, preparation};
 pub use name::{Joiner, Name, Piece};
 pub use nearest::nearest;
-pub use program::{BLOCK, Block, Output, Program};
 pub use parse::{Equation, parse_condition, parse_equation, parse_expression};
+pub use program::{BLOCK, Block, Output, Program};
 pub use rows::{ColumnView, evaluate as evaluate_rows};
 pub use scalars::Scalars;

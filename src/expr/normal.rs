@@ -68,8 +68,7 @@ impl Graph {
                     self.sign(i) == Sign::Positive || (self.sign(i) == Sign::Nonnegative && e.get() > 0.0)
                 });
                 if !out.is_empty() && (left.is_empty() || out.iter().all(|&&(i, _)| self.sign(i) == Sign::Positive)) {
-                    let mut terms: Vec<(Id, f64)> =
-                        out.iter().map(|&&(i, e)| (self.log(i), e.get())).collect();
+                    let mut terms: Vec<(Id, f64)> = out.iter().map(|&&(i, e)| (self.log(i), e.get())).collect();
                     if !left.is_empty() {
                         let rest: Vec<(Id, f64)> = left.iter().map(|&&(i, e)| (i, e.get())).collect();
                         let rest = self.product(&rest);
@@ -111,17 +110,19 @@ impl Graph {
     fn log1p(&mut self, x: Id) -> Id {
         match self.node(x).clone() {
             Node::Call(Function::Expm1, a) => return a[0],
-            Node::Sum(c, t) if t.len() == 1 && c.get() == 0.0 && t[0].1.get() == -1.0 => match self.node(t[0].0).clone() {
-                Node::Call(Function::Logistic, a) => {
-                    let minus = self.scale(-1.0, a[0]);
-                    return self.call(Function::LogLogistic, &[minus]);
+            Node::Sum(c, t) if t.len() == 1 && c.get() == 0.0 && t[0].1.get() == -1.0 => {
+                match self.node(t[0].0).clone() {
+                    Node::Call(Function::Logistic, a) => {
+                        let minus = self.scale(-1.0, a[0]);
+                        return self.call(Function::LogLogistic, &[minus]);
+                    }
+                    Node::Call(Function::NormalCdf, a) => {
+                        let minus = self.scale(-1.0, a[0]);
+                        return self.call(Function::NormalLogCdf, &[minus]);
+                    }
+                    _ => {}
                 }
-                Node::Call(Function::NormalCdf, a) => {
-                    let minus = self.scale(-1.0, a[0]);
-                    return self.call(Function::NormalLogCdf, &[minus]);
-                }
-                _ => {}
-            },
+            }
             _ => {}
         }
         self.call_plain(Function::Log1p, &[x])

@@ -35,11 +35,8 @@ pub fn evaluate<'a>(
         x.iter_mut().zip(&y).for_each(|(x, &y)| *x = f(*x, y));
         Ok(x)
     };
-    let missing = |name: &Name| ExprError {
-        span: ast.span,
-        fault: Fault::Unknown("column", name.to_string()),
-        advice: None,
-    };
+    let missing =
+        |name: &Name| ExprError { span: ast.span, fault: Fault::Unknown("column", name.to_string()), advice: None };
     let column = |name: &Name| match columns(name) {
         Some(ColumnView::Number(x)) => Ok(x.to_vec()),
         Some(ColumnView::Category { .. }) => Err(ExprError {
