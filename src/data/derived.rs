@@ -70,21 +70,11 @@ fn plain(name: &crate::expr::Name) -> String {
     text
 }
 
-/// The column a leaf stands for: a name, or a text in single quotes where a label makes no sense.
-fn column(ast: &Ast) -> Option<String> {
-    match &ast.kind {
-        Kind::Name(name) => Some(plain(name)),
-        Kind::Text(text) => Some(text.clone()),
-        _ => None,
-    }
-}
-
 fn gather(ast: &Ast, uses: &mut BTreeMap<String, (Use, Span)>) -> Result<(), ExprError> {
-    if let Some(name) = column(ast) {
-        return note(name, Use::Number, ast.span, uses);
-    }
     match &ast.kind {
-        Kind::Number(_) | Kind::Name(_) | Kind::Text(_) => Ok(()),
+        // The parser lets texts stand in comparisons only.
+        Kind::Number(_) | Kind::Text(_) => Ok(()),
+        Kind::Name(name) => note(plain(name), Use::Number, ast.span, uses),
         Kind::Sum(_) => Err(ExprError {
             span: ast.span,
             fault: crate::expr::Fault::Sort("sum over a pattern is for parameters".into()),
@@ -204,7 +194,8 @@ mod tests {
     #[test]
     fn odd_names_are_columns() {
         assert_eq!(formula("log(\"soak time\") + a.b").uses.keys().collect::<Vec<_>>(), ["a.b", "soak time"]);
-        assert_eq!(formula("log('soak time')").uses.keys().collect::<Vec<_>>(), ["soak time"]);
+        let label = Formula::parse("data.derive.x".into(), "log('soak time')", false).unwrap_err();
+        assert!(label.to_string().contains("an odd name stands in double quotes"), "{label}");
     }
 
     #[test]
