@@ -125,7 +125,7 @@ impl Lower<'_> {
         // 1. split every output into factor times row product
         let mut products: Vec<Id> = Vec::new();
         let mut sums: Vec<Vec<(u32, Id)>> = Vec::new();
-        let mut rows: Vec<(u32, Id)> = Vec::new();
+        let mut rows: Vec<(u32, Id, bool)> = Vec::new();
         for output in outputs {
             match *output {
                 Output::Sum(id) => {
@@ -138,14 +138,15 @@ impl Lower<'_> {
                     let terms = terms.into_iter().map(|(k, p)| (self.scalar(k), p)).collect();
                     sums.push(terms);
                 }
-                Output::Row(id) => {
+                Output::Row(id) | Output::WeightedRow(id) => {
                     let terms = self.grouped(id);
                     let (k, p) = match terms[..] {
                         [(k, p)] => (k, p),
                         [] => (self.graph.constant(0.0), self.graph.constant(1.0)),
                         _ => (self.graph.constant(1.0), id),
                     };
-                    rows.push((self.scalar(k), p));
+                    let weigh = self.weighted && matches!(output, Output::WeightedRow(_));
+                    rows.push((self.scalar(k), p, weigh));
                 }
             }
         }
@@ -164,9 +165,14 @@ impl Lower<'_> {
         }
         let rows: Vec<RowOutput> = rows
             .into_iter()
-            .map(|(scale, p)| {
+            .map(|(scale, p, weigh)| {
                 let one = self.graph.as_constant(p) == Some(1.0);
                 let source = (!one).then(|| self.row(p));
+                let source = match (source, weigh) {
+                    (s, false) => s,
+                    (None, true) => Some(Source::Weight),
+                    (Some(s), true) => Some(self.push(Op::Multiply(s, Source::Weight))),
+                };
                 RowOutput { scale, source, node: p, fixed: self.graph.is_fixed(p) }
             })
             .collect();

@@ -24,6 +24,8 @@ pub enum Output {
     Sum(Id),
     /// The value in each row.
     Row(Id),
+    /// The value in each row times its weight.
+    WeightedRow(Id),
 }
 
 /// Where an operand lies.

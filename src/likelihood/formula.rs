@@ -69,7 +69,7 @@ impl Compiler<'_> {
                 return Slot::Zero;
             }
             if by_row {
-                outputs.push(Output::Row(id));
+                outputs.push(Output::WeightedRow(id));
                 rows += 1;
                 Slot::Row(rows - 1)
             } else {

@@ -1,10 +1,26 @@
 //! Family, design and table joined: value, gradient, Hessian, per-row scores and information of the log-likelihood.
 
+#[cfg(test)]
+mod checks;
+mod compose;
 pub mod coordinates;
+mod design;
+pub mod error;
+mod formula;
+mod gram;
 pub mod model;
+mod part;
+pub mod prepare;
+mod rows;
+pub mod sample;
+mod start;
+mod statement;
 
 pub use coordinates::Coordinates;
+pub use error::LikelihoodError;
 pub use model::Model;
+pub use prepare::prepare;
+pub use sample::Sample;
 
 use crate::math::{Matrix, Range, Vector};
 

@@ -1,0 +1,269 @@
+//! A model joined to its data, ready to be evaluated.
+
+use rayon::prelude::{IntoParallelIterator, ParallelIterator};
+
+use super::coordinates::Coordinates;
+use super::formula::Formula;
+use super::part::{Part, Which, pairwise};
+use super::prepare::Bound;
+use super::start;
+use super::{Evaluation, Information, LogLikelihood, Order, Parameter};
+use crate::math::{Matrix, Vector};
+
+/// A log-likelihood over the rows of a table.
+#[derive(Debug)]
+pub struct Sample {
+    pub(super) parameters: Vec<Parameter>,
+    pub(super) known: Vec<(String, f64)>,
+    pub(super) coordinates: Coordinates,
+    pub(super) formulas: Vec<Formula>,
+    pub(super) parts: Vec<Part>,
+    pub(super) weight_total: f64,
+    pub(super) start: Vector,
+    pub(super) concave: bool,
+    pub(super) equations: Vec<String>,
+    pub(super) mixture: Option<Mixture>,
+    pub(super) expected: bool,
+    pub(super) collapsed_rows: bool,
+}
+
+/// What a mixture needs for its own dangers: collapse and exchange of components.
+#[derive(Debug, Default)]
+pub(super) struct Mixture {
+    levels: Vec<(Vec<Component>, f64)>,
+}
+
+#[derive(Debug)]
+struct Component {
+    name: String,
+    family: &'static str,
+    share: Option<Bound>,
+    own: Vec<Bound>,
+    spread: Option<Bound>,
+}
+
+/// Spread below which a component counts as collapsed, as a part of the response's.
+const COLLAPSED_SPREAD: f64 = 1e-3;
+/// Total responsibility below which it does.
+const COLLAPSED_WEIGHT: f64 = 2.0;
+
+impl Mixture {
+    #[allow(clippy::type_complexity, reason = "handed over once, by the one caller")]
+    pub(super) fn push(
+        &mut self,
+        components: Vec<(String, &'static str, Option<Bound>, Vec<Bound>, Option<Bound>)>,
+        sd: f64,
+    ) {
+        let list = components
+            .into_iter()
+            .map(|(name, family, share, own, spread)| Component { name, family, share, own, spread })
+            .collect();
+        self.levels.push((list, sd));
+    }
+}
+
+impl Sample {
+    /// Restrictions that the family brings, such as `sum(share.*) = 1`.
+    pub fn family_restrictions(&self) -> &[String] {
+        &self.equations
+    }
+
+    /// Names with known values.
+    pub fn known(&self) -> &[(String, f64)] {
+        &self.known
+    }
+
+    /// The starting point computed from the data and the study.
+    pub fn start(&self) -> &Vector {
+        &self.start
+    }
+
+    /// Whether rows of labels were counted into cells.
+    pub fn is_counted(&self) -> bool {
+        self.collapsed_rows
+    }
+
+    /// Whether the family has expected information for these rows.
+    pub fn has_expected(&self) -> bool {
+        self.expected && self.formulas.iter().all(|f| f.expected.is_some())
+    }
+
+    /// Operations on blocks and sums of one pass with Hessian, by formula.
+    pub fn operations(&self) -> Vec<usize> {
+        self.formulas.iter().map(|f| f.hessian.program.operations()).collect()
+    }
+
+    fn run(&self, which: Which, theta: &[f64]) -> (f64, Vector, Matrix) {
+        let n = self.parameters.len();
+        let mut value = 0.0;
+        let mut gradient = Vector::zeros(if which == Which::Value { 0 } else { n });
+        let second = !matches!(which, Which::Value | Which::Gradient);
+        let mut matrix = if second { Matrix::zeros(n, n) } else { Matrix::zeros(0, 0) };
+        let mut tasks = Vec::new();
+        for (p, part) in self.parts.iter().enumerate() {
+            if let Some(pass) = self.formulas[part.formula].which(which) {
+                tasks.extend(part.chunks(pass).into_iter().map(|c| (p, c)));
+            }
+        }
+        let one = |(p, chunk): (usize, std::ops::Range<usize>)| {
+            let part = &self.parts[p];
+            let sums = self.formulas[part.formula]
+                .which(which)
+                .map(|pass| part.chunk(pass, theta, chunk, part.knows_kept(which)))
+                .unwrap_or_default();
+            (p, sums)
+        };
+        let done: Vec<(usize, Vec<f64>)> = if tasks.len() > 1 {
+            tasks.into_par_iter().map(one).collect()
+        } else {
+            tasks.into_iter().map(one).collect()
+        };
+        let mut by_part: Vec<Vec<Vec<f64>>> = vec![Vec::new(); self.parts.len()];
+        for (p, sums) in done {
+            by_part[p].push(sums);
+        }
+        for (part, sums) in self.parts.iter().zip(by_part) {
+            let Some(pass) = self.formulas[part.formula].which(which) else { continue };
+            let sums = pairwise(sums, 0);
+            part.finish(which, pass, theta, sums, &mut value, gradient.as_mut_slice(), &mut |i, j, x| {
+                matrix[(i, j)] += x;
+            });
+        }
+        (value, gradient, matrix)
+    }
+}
+
+impl LogLikelihood for Sample {
+    fn parameters(&self) -> &[Parameter] {
+        &self.parameters
+    }
+
+    fn coordinates(&self) -> &Coordinates {
+        &self.coordinates
+    }
+
+    fn evaluate(&self, phi: &Vector, order: Order) -> Evaluation {
+        let which = match order {
+            Order::Value => Which::Value,
+            Order::Gradient => Which::Gradient,
+            Order::Hessian => Which::Hessian,
+        };
+        let (value, gradient, hessian) = self.run(which, phi.as_slice());
+        Evaluation { value, gradient, hessian }
+    }
+
+    fn information(&self, kind: Information, phi: &Vector) -> Option<Matrix> {
+        match kind {
+            Information::Expected if self.has_expected() => Some(self.run(Which::Expected, phi.as_slice()).2),
+            Information::Outer => Some(self.run(Which::Outer, phi.as_slice()).2),
+            _ => None,
+        }
+    }
+
+    fn weight_total(&self) -> f64 {
+        self.weight_total
+    }
+
+    fn starts(&self, count: usize, seed: u64) -> Vec<Vector> {
+        start::spread(&self.start, &self.parameters, count, seed)
+    }
+
+    fn concave(&self) -> bool {
+        self.concave
+    }
+
+    fn collapsed(&self, phi: &Vector) -> Option<String> {
+        let mixture = self.mixture.as_ref()?;
+        let at = |b: &Bound| match *b {
+            Bound::Free(i) => phi[i],
+            Bound::Known(x) => x,
+        };
+        let mut gradient = None;
+        for (components, sd) in &mixture.levels {
+            for c in components {
+                let free = c.own.iter().any(|b| matches!(b, Bound::Free(_)));
+                if !free {
+                    continue;
+                }
+                if let Some(spread) = &c.spread
+                    && at(spread) < COLLAPSED_SPREAD * sd
+                {
+                    return Some(c.name.clone());
+                }
+                if let Some(Bound::Free(i)) = c.share {
+                    // the responsibilities of a component sum to share * dl / dshare
+                    let g = gradient.get_or_insert_with(|| self.run(Which::Gradient, phi.as_slice()).1);
+                    if c.spread.is_some_and(|s| matches!(s, Bound::Free(_))) && phi[i] * g[i] < COLLAPSED_WEIGHT {
+                        return Some(c.name.clone());
+                    }
+                }
+            }
+        }
+        None
+    }
+
+    fn relabellings(&self) -> Vec<Vec<usize>> {
+        let Some(mixture) = &self.mixture else { return Vec::new() };
+        let n = self.parameters.len();
+        let mut out: Vec<Vec<usize>> = vec![(0..n).collect()];
+        for (components, _) in &mixture.levels {
+            let index = |b: &Option<Bound>| match b {
+                Some(Bound::Free(i)) => Some(*i),
+                _ => None,
+            };
+            // only components of one family with everything free may change places
+            let alike: Vec<Vec<usize>> = components
+                .iter()
+                .filter_map(|c| {
+                    let mut all = vec![index(&c.share)?];
+                    for b in &c.own {
+                        all.push(index(&Some(*b))?);
+                    }
+                    Some((c.family, all))
+                })
+                .filter(|(family, _)| components.iter().filter(|c| c.family == *family).count() > 1)
+                .map(|(_, all)| all)
+                .collect();
+            if alike.len() < 2 || alike.len() > 5 || alike.iter().any(|a| a.len() != alike[0].len()) {
+                continue;
+            }
+            let mut next = Vec::new();
+            for order in permutations(alike.len()) {
+                let ranges_fit = order.iter().enumerate().all(|(to, &from)| {
+                    alike[to].iter().zip(&alike[from]).all(|(&a, &b)| self.parameters[a].range == self.parameters[b].range)
+                });
+                if !ranges_fit {
+                    continue;
+                }
+                for base in &out {
+                    let mut p = base.clone();
+                    for (to, &from) in order.iter().enumerate() {
+                        for (&a, &b) in alike[to].iter().zip(&alike[from]) {
+                            p[a] = b;
+                        }
+                    }
+                    next.push(p);
+                }
+            }
+            out = next;
+        }
+        out.retain(|p| p.iter().enumerate().any(|(i, &j)| i != j));
+        out
+    }
+}
+
+fn permutations(n: usize) -> Vec<Vec<usize>> {
+    if n == 0 {
+        return vec![Vec::new()];
+    }
+    let mut out = Vec::new();
+    for rest in permutations(n - 1) {
+        for at in 0..=rest.len() {
+            let mut p = rest.clone();
+            p.insert(at, n - 1);
+            out.push(p);
+        }
+    }
+    out.sort();
+    out
+}
