@@ -59,7 +59,8 @@ fn started(name: &str, x: f64) -> Setting {
 fn models() -> Vec<(&'static str, Model)> {
     let mut out = vec![("normal", model("normal", "y"))];
     let mut m = model("normal", "y");
-    m.parameters = vec![with_terms("mean", terms(&[&["x"], &["kiln"], &["kiln", "z"]])), with_terms("sd", terms(&[&["z"]]))];
+    m.parameters =
+        vec![with_terms("mean", terms(&[&["x"], &["kiln"], &["kiln", "z"]])), with_terms("sd", terms(&[&["z"]]))];
     out.push(("normal with terms on both", m));
     let mut m = model("poisson", "n");
     m.exposure = Some("area".into());
@@ -87,14 +88,17 @@ fn models() -> Vec<(&'static str, Model)> {
     out.push(("normal in intervals", m));
     out.push(("categorical", model("categorical", "kiln")));
     let mut m = model("mixture", "y");
-    m.components = ["a", "b"]
-        .map(|n| Component { name: n.into(), family: "normal".into(), ..Component::default() })
-        .to_vec();
+    m.components =
+        ["a", "b"].map(|n| Component { name: n.into(), family: "normal".into(), ..Component::default() }).to_vec();
     m.components[0].parameters.push(Setting { name: "sd".into(), known: vec![(None, 0.7)], ..Setting::default() });
     out.push(("mixture", m));
     let mut m = model("normal", "y");
     m.parameters = vec![
-        Setting { name: "mean".into(), form: Form::Curve("a * (1 - exp(-b * t)) + c * x".into()), ..Setting::default() },
+        Setting {
+            name: "mean".into(),
+            form: Form::Curve("a * (1 - exp(-b * t)) + c * x".into()),
+            ..Setting::default()
+        },
         started("a", 1.0),
         started("b", 0.5),
         Setting { range: vec![(None, Range::ALL)], ..started("c", 0.1) },
@@ -155,7 +159,11 @@ fn derivatives_agree_with_differences() {
                 for j in 0..n {
                     let bend = (u.gradient[j] - d.gradient[j]) / (2.0 * h);
                     let scale = at.hessian.amax() + 1.0;
-                    assert!((bend - at.hessian[(i, j)]).abs() < 1e-6 * scale, "{name} {i} {j}: {bend} {}", at.hessian[(i, j)]);
+                    assert!(
+                        (bend - at.hessian[(i, j)]).abs() < 1e-6 * scale,
+                        "{name} {i} {j}: {bend} {}",
+                        at.hessian[(i, j)]
+                    );
                 }
             }
         }
@@ -185,7 +193,11 @@ fn threads_do_not_change_a_bit() {
     let s = sample(name, m, true, 70_000);
     let phi = s.coordinates().phi(s.start());
     let run = |threads: usize| {
-        rayon::ThreadPoolBuilder::new().num_threads(threads).build().unwrap().install(|| s.evaluate(&phi, Order::Hessian))
+        rayon::ThreadPoolBuilder::new()
+            .num_threads(threads)
+            .build()
+            .unwrap()
+            .install(|| s.evaluate(&phi, Order::Hessian))
     };
     assert_eq!(run(1), run(3));
 }

@@ -44,16 +44,23 @@ pub(super) fn coefficients(terms: &Terms, table: &Table, place: &str) -> Result<
             partial = partial
                 .into_iter()
                 .flat_map(|c| {
-                    pieces.iter().map(move |level| {
-                        let first = c.key.pieces.is_empty();
-                        let mut key = if first { Name::single(column.as_str()) } else { c.key.clone().colon(column.as_str()) };
-                        if let Some(level) = level {
-                            key = key.dot(level.as_str());
-                        }
-                        let mut factors = c.factors.clone();
-                        factors.push((column.clone(), level.clone()));
-                        Coefficient { key, factors }
-                    }).collect::<Vec<_>>()
+                    pieces
+                        .iter()
+                        .map(move |level| {
+                            let first = c.key.pieces.is_empty();
+                            let mut key = if first {
+                                Name::single(column.as_str())
+                            } else {
+                                c.key.clone().colon(column.as_str())
+                            };
+                            if let Some(level) = level {
+                                key = key.dot(level.as_str());
+                            }
+                            let mut factors = c.factors.clone();
+                            factors.push((column.clone(), level.clone()));
+                            Coefficient { key, factors }
+                        })
+                        .collect::<Vec<_>>()
                 })
                 .collect();
         }
@@ -154,7 +161,11 @@ pub(super) fn meaning(parameter: &str, link: Link, terms: &Terms, table: &Table,
                     None => c.clone(),
                 })
                 .collect();
-            format!("what {} do together beyond their separate parts, on the scale of the {}", text.join(" and "), scale(parameter.to_string()))
+            format!(
+                "what {} do together beyond their separate parts, on the scale of the {}",
+                text.join(" and "),
+                scale(parameter.to_string())
+            )
         }
     }
 }

@@ -82,9 +82,7 @@ impl Compiler<'_> {
             first.iter().enumerate().map(|(v, &id)| slot(self.graph, id, by_row(v, self.variables))).collect();
         let second: Vec<(usize, usize, Slot)> = second
             .iter()
-            .map(|&(u, v, id)| {
-                (u, v, slot(self.graph, id, by_row(u, self.variables) || by_row(v, self.variables)))
-            })
+            .map(|&(u, v, id)| (u, v, slot(self.graph, id, by_row(u, self.variables) || by_row(v, self.variables))))
             .filter(|s| s.2 != Slot::Zero)
             .collect();
         let predictors = self.variables.iter().filter(|v| matches!(v, Variable::Predictor(_))).count();

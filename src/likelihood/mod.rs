@@ -15,12 +15,14 @@ mod rows;
 pub mod sample;
 mod start;
 mod statement;
+pub mod wanted;
 
 pub use coordinates::Coordinates;
 pub use error::LikelihoodError;
 pub use model::Model;
 pub use prepare::prepare;
 pub use sample::Sample;
+pub use wanted::wanted;
 
 use crate::math::{Matrix, Range, Vector};
 

@@ -95,11 +95,8 @@ impl Part {
         predictors: Vec<Predictor>,
     ) -> Part {
         let weights = weights.map(|w| blocks(w.iter().copied()));
-        let source = Store {
-            columns: formula.raw.iter().map(|&c| blocks(raw(c).into_iter())).collect(),
-            weights,
-            rows,
-        };
+        let source =
+            Store { columns: formula.raw.iter().map(|&c| blocks(raw(c).into_iter())).collect(), weights, rows };
         let count = formula.layout.columns();
         let mut columns: Vec<Vec<Block>> = vec![vec![Block::ZERO; source.blocks()]; count];
         let program = &formula.preparation;
@@ -162,7 +159,9 @@ impl Part {
             program.block(&mut registers, &self.store, block, &scalars, gathered);
             let mut place = places.iter().map(|&(at, len)| (at - program.gathers(), len));
             for (v, slot) in pass.first.iter().enumerate() {
-                if let (&Slot::Row(k), Some((at, len))) = (slot, if matches!(slot, Slot::Row(_)) { place.next() } else { None }) {
+                if let (&Slot::Row(k), Some((at, len))) =
+                    (slot, if matches!(slot, Slot::Row(_)) { place.next() } else { None })
+                {
                     let h = program.row(k, &registers, &self.store, block);
                     gram::cross(&mut design[at..at + len], &self.predictors[v - p].columns, block, h);
                 }

@@ -222,9 +222,13 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
     let concave = match &statement.body {
         Body::Density(f) => f.concave && !statement.rows.iter().any(|r| r.curve.is_some()),
         Body::Categorical => true,
-        Body::Mixture(_) => locals.iter().enumerate().all(|(k, l)| {
-            l.row.is_none() || bound_locals.iter().all(|b| matches!(b[k], Bound::Known(_)))
-        }) && predictors.is_empty(),
+        Body::Mixture(_) => {
+            locals
+                .iter()
+                .enumerate()
+                .all(|(k, l)| l.row.is_none() || bound_locals.iter().all(|b| matches!(b[k], Bound::Known(_))))
+                && predictors.is_empty()
+        }
         Body::Custom(_) => false,
     };
     let equations = match &statement.body {
@@ -301,7 +305,14 @@ fn locals<'m>(
                 "use per = \"COLUMN\" for shares that differ by level",
             ));
         }
-        for key in s.start.iter().map(|e| &e.0).chain(s.known.iter().map(|e| &e.0)).chain(s.range.iter().map(|e| &e.0)).flatten() {
+        for key in s
+            .start
+            .iter()
+            .map(|e| &e.0)
+            .chain(s.known.iter().map(|e| &e.0))
+            .chain(s.range.iter().map(|e| &e.0))
+            .flatten()
+        {
             let Ok(name) = Name::parse(key) else { continue };
             if !share_names.contains(&Name::single("share").then(&name)) {
                 let names: Vec<String> = share_names.iter().map(Name::to_string).collect();
@@ -369,7 +380,9 @@ fn locals<'m>(
                 "write the formula with columns instead",
             ));
         }
-        if !known && !statement.texts().iter().any(|(a, _)| a.names().iter().any(|(n, _)| n.as_single() == Some(&s.name))) {
+        if !known
+            && !statement.texts().iter().any(|(a, _)| a.names().iter().any(|(n, _)| n.as_single() == Some(&s.name)))
+        {
             return Err(LikelihoodError::statement(
                 place,
                 format!("parameter {} stands in no formula", s.name),
@@ -377,10 +390,7 @@ fn locals<'m>(
             ));
         }
         out.push(LocalPlan {
-            local: Local {
-                name: Name::single(s.name.as_str()),
-                range: keyed(&s.range, None).unwrap_or(Range::ALL),
-            },
+            local: Local { name: Name::single(s.name.as_str()), range: keyed(&s.range, None).unwrap_or(Range::ALL) },
             settings: Some((s, None)),
             place,
             shared: s.shared,
@@ -545,10 +555,13 @@ fn designs(
                 let find = |n: &Name| {
                     n.as_single().and_then(|n| table.column(n)).map(|c| match &c.values {
                         crate::data::Values::Number(x) => columns::ColumnView::Number(x),
-                        crate::data::Values::Category { codes, levels } => columns::ColumnView::Category { codes, levels },
+                        crate::data::Values::Category { codes, levels } => {
+                            columns::ColumnView::Category { codes, levels }
+                        }
                     })
                 };
-                let x = columns::evaluate(&ast, &find, table.rows).map_err(LikelihoodError::expression(place.clone()))?;
+                let x =
+                    columns::evaluate(&ast, &find, table.rows).map_err(LikelihoodError::expression(place.clone()))?;
                 if let Some(row) = x.iter().position(|v| !v.is_finite()) {
                     return Err(LikelihoodError::Data(format!(
                         "{}, line {}: the offset {text} is {} there; every row needs a finite number",
@@ -575,9 +588,7 @@ fn designs(
         let sets: Vec<(usize, Vec<usize>)> = if p.setting.shared || bound.len() == 1 {
             vec![(0, (0..rows.count).collect())]
         } else {
-            (0..bound.len())
-                .map(|l| (l, (0..rows.count).filter(|&i| rows.level[i] as usize == l).collect()))
-                .collect()
+            (0..bound.len()).map(|l| (l, (0..rows.count).filter(|&i| rows.level[i] as usize == l).collect())).collect()
         };
         for (level, members) in sets {
             let free: Vec<(usize, usize)> = bound[level][k]

@@ -121,7 +121,10 @@ fn numbers<'t>(table: &'t Table, name: &str, place: &str) -> Result<&'t [f64], L
 /// A fault in a cell, with its place in the file.
 fn fault(table: &Table, row: usize, column: &str, found: f64, wanted: &str) -> LikelihoodError {
     let file = if table.file.is_empty() { "the data" } else { &table.file };
-    LikelihoodError::Data(format!("{file}, line {}, column {column}: found {found}, expected {wanted}", table.line(row)))
+    LikelihoodError::Data(format!(
+        "{file}, line {}, column {column}: found {found}, expected {wanted}",
+        table.line(row)
+    ))
 }
 
 /// Reads the rows of a table as the model sees them. `expressions` are the columns that texts of the model name.
@@ -198,7 +201,12 @@ pub(super) fn read(
     }
     for (at, component) in model.components.iter().enumerate() {
         if let Some(name) = &component.exposure {
-            sized(&mut rows, &format!("exposure of {}", component.name), name, &format!("model.component.{at}.exposure"))?;
+            sized(
+                &mut rows,
+                &format!("exposure of {}", component.name),
+                name,
+                &format!("model.component.{at}.exposure"),
+            )?;
         }
         if let Some(Amount::Column(name)) = &component.trials {
             let n = numbers(table, name, &format!("model.component.{at}.trials"))?.to_vec();
@@ -223,7 +231,11 @@ pub(super) fn read(
     if let Some(event) = &model.event {
         let seen = events(table, &event.column, event.seen.as_deref())?;
         let Some((_, y)) = rows.column(Y) else {
-            return Err(LikelihoodError::statement("model.event", "event needs a response", "name the column under response"));
+            return Err(LikelihoodError::statement(
+                "model.event",
+                "event needs a response",
+                "name the column under response",
+            ));
         };
         let y = y.to_vec();
         rows.kinds = seen.iter().map(|&s| if s { RowKind::Exact } else { RowKind::Above }).collect();
@@ -243,7 +255,9 @@ pub(super) fn read(
 fn check(table: &Table, name: &str, y: &[f64], support: Option<Support>) -> Result<(), LikelihoodError> {
     let (ok, words): (fn(f64) -> bool, &str) = match support {
         Some(Support::Nonnegative) => (|y| y >= 0.0 && y.is_finite(), "a number, 0 or more"),
-        Some(Support::Count | Support::CountOfTrials) => (|y| y >= 0.0 && y.fract() == 0.0, "a whole number, 0 or more"),
+        Some(Support::Count | Support::CountOfTrials) => {
+            (|y| y >= 0.0 && y.fract() == 0.0, "a whole number, 0 or more")
+        }
         Some(Support::Real) | None => (f64::is_finite, "a finite number"),
     };
     match y.iter().position(|&v| !ok(v)) {
@@ -365,7 +379,8 @@ fn cells(model: &Model, table: &Table, rows: Rows) -> Result<Rows, LikelihoodErr
             }
         };
         codes.iter_mut().zip(&own).for_each(|(c, &o)| *c = *c * levels.len() + o as usize);
-        cells = cells.iter().flat_map(|c| levels.iter().map(|l| c.clone().dot(l.as_str())).collect::<Vec<_>>()).collect();
+        cells =
+            cells.iter().flat_map(|c| levels.iter().map(|l| c.clone().dot(l.as_str())).collect::<Vec<_>>()).collect();
     }
     if cells.len() > 2_000 {
         return Err(LikelihoodError::statement(

@@ -230,7 +230,10 @@ impl LogLikelihood for Sample {
             let mut next = Vec::new();
             for order in permutations(alike.len()) {
                 let ranges_fit = order.iter().enumerate().all(|(to, &from)| {
-                    alike[to].iter().zip(&alike[from]).all(|(&a, &b)| self.parameters[a].range == self.parameters[b].range)
+                    alike[to]
+                        .iter()
+                        .zip(&alike[from])
+                        .all(|(&a, &b)| self.parameters[a].range == self.parameters[b].range)
                 });
                 if !ranges_fit {
                     continue;

@@ -41,8 +41,7 @@ pub(super) fn theta(
 ) -> Result<Vector, LikelihoodError> {
     let mut phi = Vector::zeros(parameters.len());
     for (level, bound) in shape.bound_locals.iter().enumerate() {
-        let members: Vec<usize> =
-            (0..shape.rows.count).filter(|&i| shape.rows.level[i] as usize == level).collect();
+        let members: Vec<usize> = (0..shape.rows.count).filter(|&i| shape.rows.level[i] as usize == level).collect();
         match &shape.statement.body {
             Body::Density(f) => density(shape, f, level, &members, &mut phi),
             Body::Categorical => {
@@ -119,7 +118,8 @@ fn density(shape: &Shape, f: &Family, level: usize, members: &[usize], phi: &mut
     let mut moments = shape.rows.moments(members.iter().copied(), size);
     let mut values = (f.start)(&moments);
     for (k, p) in shape.predictors.iter().enumerate() {
-        let fitted = if p.local.row == 0 { least_squares(shape, f, level, k, members, size, &moments, phi) } else { None };
+        let fitted =
+            if p.local.row == 0 { least_squares(shape, f, level, k, members, size, &moments, phi) } else { None };
         if let Some(rest) = fitted
             && p.local.link == Link::Identity
         {
@@ -235,7 +235,8 @@ fn least_squares(
     // fitted values outside the range of the parameter would leave the likelihood undefined
     if link == Link::Identity && f.parameters[0].range.low == 0.0 {
         let bad = members.iter().any(|&i| {
-            free.iter().enumerate().map(|(a, &(j, _))| beta[a] * columns[j][i]).sum::<f64>() + offset.map_or(0.0, |o| o[i])
+            free.iter().enumerate().map(|(a, &(j, _))| beta[a] * columns[j][i]).sum::<f64>()
+                + offset.map_or(0.0, |o| o[i])
                 <= 0.0
         });
         if bad {

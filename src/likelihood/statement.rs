@@ -225,9 +225,8 @@ fn no_parameter<'a>(name: &str, place: &str, known: impl Iterator<Item = &'a str
 /// Whether a name is LEVEL.NAME for one of the names (the level is checked against the data later).
 fn is_of_level(name: &str, names: &[&str], model: &Model) -> bool {
     model.per.is_some()
-        && Name::parse(name).is_ok_and(|n| {
-            n.pieces.len() == 2 && names.iter().any(|m| n.pieces[1].text.as_deref() == Some(m))
-        })
+        && Name::parse(name)
+            .is_ok_and(|n| n.pieces.len() == 2 && names.iter().any(|m| n.pieces[1].text.as_deref() == Some(m)))
 }
 
 fn entry<'m>(
