@@ -24,7 +24,6 @@ impl Folder {
         Folder(path)
     }
 
-    #[allow(dead_code)]
     pub fn path(&self) -> &Path {
         &self.0
     }

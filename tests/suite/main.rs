@@ -7,5 +7,11 @@ mod tiles;
 mod harness;
 
 mod datasets;
+mod equivalence;
 mod layers;
+mod nist;
+mod own_cases;
+mod readme;
+mod reports;
+mod threads;
 mod worked_examples;
