@@ -134,7 +134,14 @@ fn a_column_in_a_wildly_other_unit() {
 
 #[test]
 fn a_counted_table_and_its_rows() {
-    let counts = [("north", "1", 9), ("north", "0", 31), ("middle", "1", 6), ("middle", "0", 27), ("south", "1", 3), ("south", "0", 40)];
+    let counts = [
+        ("north", "1", 9),
+        ("north", "0", 31),
+        ("middle", "1", 6),
+        ("middle", "0", 27),
+        ("south", "1", 3),
+        ("south", "0", 40),
+    ];
     let column = |k: usize, whole: bool| -> Vec<String> {
         let cell = |c: &(&str, &str, usize)| [c.0.to_owned(), c.1.to_owned(), c.2.to_string()][k].clone();
         counts.iter().flat_map(|c| std::iter::repeat_n(cell(c), if whole { 1 } else { c.2 })).collect()
@@ -145,7 +152,10 @@ fn a_counted_table_and_its_rows() {
              response = \"cracked\"\n[model.probability]\nterms = [\"kiln\"]\nlink = \"logit\"\n[tested]\nodds = \"probability.kiln.south = 2 * probability.kiln.middle\"\n"
         )
     };
-    let table = fit(&[("kiln", column(0, true)), ("cracked", column(1, true)), ("tiles", column(2, true))], &study("weight = \"tiles\""));
+    let table = fit(
+        &[("kiln", column(0, true)), ("cracked", column(1, true)), ("tiles", column(2, true))],
+        &study("weight = \"tiles\""),
+    );
     let rows = fit(&[("kiln", column(0, false)), ("cracked", column(1, false))], &study(""));
     same_estimates("counted", &table, &rows);
     same_figures("counted", &table, &rows, &["value", "se", "z", "p", "gap"]);
@@ -188,7 +198,8 @@ fn a_redundant_restriction_changes_nothing() {
     let data = flaws(1.0);
     let plain = "a = \"rate.kiln.middle = rate.kiln.south\"\nb = \"rate.soak = 0.1\"";
     let alone = fit(&data, &flaw_study(plain));
-    let more = fit(&data, &flaw_study(&format!("{plain}\nc = \"rate.kiln.middle + rate.soak = rate.kiln.south + 0.1\"")));
+    let more =
+        fit(&data, &flaw_study(&format!("{plain}\nc = \"rate.kiln.middle + rate.soak = rate.kiln.south + 0.1\"")));
     same_estimates("redundant", &alone, &more);
     assert!(more.warnings().contains('c'), "the redundant one is named: {}", more.warnings());
 }
@@ -205,13 +216,17 @@ fn a_linear_restriction_substituted_into_the_model() {
     }
     let data = [("one", one), ("two", two), ("y", y)];
     let study = |derive: &str, terms: &str, tested: &str| {
-        format!("[data]\nfile = \"data.csv\"\n{derive}\n[model]\nfamily = \"normal\"\nresponse = \"y\"\n[model.mean]\nterms = {terms}\n{tested}\n")
+        format!(
+            "[data]\nfile = \"data.csv\"\n{derive}\n[model]\nfamily = \"normal\"\nresponse = \"y\"\n[model.mean]\nterms = {terms}\n{tested}\n"
+        )
     };
     let tested = fit(&data, &study("", "[\"one\", \"two\"]", "[tested]\nalike = \"mean.one = mean.two\""));
     let inside = fit(&data, &study("[data.derive]\nboth = \"one + two\"", "[\"both\"]", ""));
     same("l", tested.number("/restricted/log_likelihood"), inside.number("/restricted/log_likelihood"));
     for figure in ["value", "se"] {
-        for (a, b) in [("mean.one", "mean.both"), ("mean.two", "mean.both"), ("mean.intercept", "mean.intercept"), ("sd", "sd")] {
+        for (a, b) in
+            [("mean.one", "mean.both"), ("mean.two", "mean.both"), ("mean.intercept", "mean.intercept"), ("sd", "sd")]
+        {
             same(a, tested.estimate("restricted", a, figure), inside.estimate("restricted", b, figure));
         }
     }

@@ -15,7 +15,8 @@ fn fit(data: &str, study: &str, options: &[&str]) -> Fit {
     folder.fit(study, options)
 }
 
-const COUNTED: &str = "[data]\nfile = \"data.csv\"\nweight = \"n\"\n[model]\nfamily = \"categorical\"\nresponse = \"cell\"\n";
+const COUNTED: &str =
+    "[data]\nfile = \"data.csv\"\nweight = \"n\"\n[model]\nfamily = \"categorical\"\nresponse = \"cell\"\n";
 
 #[test]
 fn a_cell_never_seen_leaves_likelihood_ratio_and_no_wald() {
@@ -31,7 +32,11 @@ fn a_cell_never_seen_leaves_likelihood_ratio_and_no_wald() {
         * (12.0 * f64::ln(12.0 / (12.0 * 19.0 / 28.0))
             + 7.0 * f64::ln(7.0 / (16.0 * 19.0 / 28.0))
             + 9.0 * f64::ln(9.0 / (16.0 * 9.0 / 28.0)));
-    assert!(near(fit.number("/tests/lr/chi_square").unwrap(), g2, 1e-9, 0.0), "{:?}", fit.number("/tests/lr/chi_square"));
+    assert!(
+        near(fit.number("/tests/lr/chi_square").unwrap(), g2, 1e-9, 0.0),
+        "{:?}",
+        fit.number("/tests/lr/chi_square")
+    );
     // Pearson's statistic, as the score test with expected information is.
     assert!(near(fit.number("/tests/score/chi_square").unwrap(), 9.947_368_421_052_632, 1e-9, 0.0));
     assert!(fit.value["tests"]["wald"].is_null(), "{}", fit.value["tests"]["wald"]);
@@ -55,7 +60,8 @@ fn observed_information_that_is_not_positive_definite_gives_no_statistic() {
     assert!(near(observed.number("/tests/lr/chi_square").unwrap(), 36.189_314_379_398_624, 1e-7, 0.0));
     let outer = fit(data, study, &["--information", "outer"]);
     // s^2 / sum of squared scores: -2.0918437...^2 over the sum of (2 (y - 6) / (1 + (y - 6)^2))^2, a closed form.
-    let scores: Vec<f64> = [-1.1, 0.3, 0.8, -0.2, 1.9, 0.1].iter().map(|y: &f64| 2.0 * (y - 6.0) / (1.0 + (y - 6.0).powi(2))).collect();
+    let scores: Vec<f64> =
+        [-1.1, 0.3, 0.8, -0.2, 1.9, 0.1].iter().map(|y: &f64| 2.0 * (y - 6.0) / (1.0 + (y - 6.0).powi(2))).collect();
     let want = scores.iter().sum::<f64>().powi(2) / scores.iter().map(|s| s * s).sum::<f64>();
     assert!(near(outer.number("/tests/score/chi_square").unwrap(), want, 1e-9, 0.0));
 }
@@ -76,7 +82,9 @@ fn an_active_edge_is_told() {
 #[test]
 fn redundant_restrictions_lower_the_degrees_of_freedom_and_are_named() {
     let data = table(&[("a", 14), ("b", 25), ("c", 19)]);
-    let study = format!("{COUNTED}[tested]\nfirst = \"share.a = share.b\"\nsecond = \"share.b = share.c\"\nthird = \"share.a = share.c\"\n");
+    let study = format!(
+        "{COUNTED}[tested]\nfirst = \"share.a = share.b\"\nsecond = \"share.b = share.c\"\nthird = \"share.a = share.c\"\n"
+    );
     let fit = fit(&data, &study, &["--information", "expected"]);
     assert_eq!(fit.number("/tests/score/df"), Some(2.0));
     // Pearson's statistic against equal shares, 58/3 each.
@@ -96,5 +104,9 @@ fn nothing_left_free_is_still_an_answer() {
     let e = [0.3 * 58.0, 0.3 * 58.0, 0.4 * 58.0];
     let want = [14.0, 25.0, 19.0].iter().zip(e).map(|(o, e): (&f64, f64)| (o - e).powi(2) / e).sum::<f64>();
     assert!(near(fit.number("/tests/score/chi_square").unwrap(), want, 1e-9, 0.0));
-    assert!(fit.list("/restricted/estimates").iter().all(|e| e["se"] == 0.0), "{}", fit.value["restricted"]["estimates"]);
+    assert!(
+        fit.list("/restricted/estimates").iter().all(|e| e["se"] == 0.0),
+        "{}",
+        fit.value["restricted"]["estimates"]
+    );
 }

@@ -12,7 +12,11 @@ fn check(name: &str, arguments: &[&str]) {
     }
     let kept = std::fs::read_to_string(&path).unwrap_or_default();
     if text != kept {
-        let at = text.lines().zip(kept.lines()).position(|(a, b)| a != b).unwrap_or(text.lines().count().min(kept.lines().count()));
+        let at = text
+            .lines()
+            .zip(kept.lines())
+            .position(|(a, b)| a != b)
+            .unwrap_or(text.lines().count().min(kept.lines().count()));
         let line = |s: &str| s.lines().nth(at).unwrap_or("(end)").to_owned();
         panic!("{name}, line {}:\n  now  {}\n  kept {}", at + 1, line(&text), line(&kept));
     }
@@ -55,7 +59,10 @@ fn help() {
 
 #[test]
 fn messages() {
-    check("message_unknown_name", &["fit", "datasets/pallet.toml", "--tested", "two_to_one_again: share.norht = 2 * share.south"]);
+    check(
+        "message_unknown_name",
+        &["fit", "datasets/pallet.toml", "--tested", "two_to_one_again: share.norht = 2 * share.south"],
+    );
     check("message_no_file", &["fit", "datasets/palet.toml"]);
     check("gate_closed", &["fit", "datasets/pallet.toml", "--gate", "0.05", "--quiet"]);
 }
