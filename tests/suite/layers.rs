@@ -51,15 +51,37 @@ fn sources() -> Vec<(String, String)> {
     let mut paths = Vec::new();
     files(&root().join("src"), &mut paths);
     paths.sort();
+    let tests = test_files(&paths);
     paths
         .iter()
+        .filter(|p| !tests.contains(p))
         .map(|p| {
             let text = std::fs::read_to_string(p).unwrap();
-            let body = text.split("#[cfg(test)]\nmod ").next().unwrap();
+            let body = text.split("#[cfg(test)]\nmod tests {").next().unwrap();
             let code = body.lines().filter(|l| !l.trim_start().starts_with("//")).collect::<Vec<_>>().join("\n");
             (p.strip_prefix(root().join("src")).unwrap().to_string_lossy().replace('\\', "/"), code)
         })
         .collect()
+}
+
+/// Files that hold unit tests only: declared as `#[cfg(test)] mod NAME;`.
+fn test_files(paths: &[PathBuf]) -> Vec<PathBuf> {
+    let mut out = Vec::new();
+    for path in paths {
+        let text = std::fs::read_to_string(path).unwrap();
+        let home = if path.file_name().is_some_and(|n| n == "mod.rs" || n == "lib.rs") {
+            path.parent().unwrap().to_owned()
+        } else {
+            path.with_extension("")
+        };
+        for rest in text.split("#[cfg(test)]\nmod ").skip(1) {
+            let name: String = rest.chars().take_while(|c| c.is_ascii_alphanumeric() || *c == '_').collect();
+            if rest[name.len()..].starts_with(';') {
+                out.extend([home.join(format!("{name}.rs")), home.join(&name).join("mod.rs")]);
+            }
+        }
+    }
+    out
 }
 
 fn floor(path: &str) -> &str {
