@@ -53,9 +53,16 @@ impl ExprError {
         candidates: impl IntoIterator<Item = &'a str>,
     ) -> Self {
         let text = name.to_string();
-        let advice = nearest(&text, candidates).map(|n| format!("nearest name: {n}"));
-        let fault = if name.is_pattern() { Fault::Unmatched(what, text) } else { Fault::Unknown(what, text) };
-        ExprError { span, fault, advice }
+        if !name.is_pattern() {
+            let advice = nearest(&text, candidates).map(|n| format!("nearest name: {n}"));
+            return ExprError { span, fault: Fault::Unknown(what, text), advice };
+        }
+        // A pattern is near to a name with the same pieces starred.
+        let patterns: Vec<String> =
+            candidates.into_iter().filter_map(|c| Some(Name::parse(c).ok()?.starred_as(name)?.to_string())).collect();
+        let near = nearest(&text, patterns.iter().map(String::as_str));
+        let advice = near.map(|n| format!("nearest that fits something: {n}"));
+        ExprError { span, fault: Fault::Unmatched(what, text), advice }
     }
 
     /// The same fault with this advice.

@@ -104,6 +104,16 @@ impl Name {
         self.pieces[at].text.as_deref()
     }
 
+    /// This name with a `*` wherever the pattern has one; `None` if the two have not as many pieces.
+    pub fn starred_as(&self, pattern: &Name) -> Option<Name> {
+        let piece = |(mine, theirs): (&Piece, &Piece)| match theirs.text {
+            None => Piece { joiner: mine.joiner, text: None },
+            Some(_) => mine.clone(),
+        };
+        let pieces = self.pieces.iter().zip(&pattern.pieces).map(piece).collect();
+        (self.pieces.len() == pattern.pieces.len()).then_some(Name { pieces })
+    }
+
     /// This pattern with every `*` replaced by the piece.
     pub fn substitute(&self, star: &str) -> Name {
         let piece =
@@ -231,6 +241,8 @@ mod tests {
         assert_eq!(name("acme.scale").star_of(&name("*.shape")), None);
         assert_eq!(name("acme.shape").star_of(&name("acme.shape")), None);
         assert_eq!(name("*.shape").substitute("a b"), name("'a b'.shape"));
+        assert_eq!(name("rate.kiln.middle").starred_as(&name("rate.kilm.*")), Some(name("rate.kiln.*")));
+        assert_eq!(name("rate.kiln").starred_as(&name("rate.kilm.*")), None);
     }
 
     #[test]

@@ -1,6 +1,21 @@
-//! Equations to c(theta), Jacobian and curvature; roles; names.
+//! Equations to c(theta), Jacobian and curvature; roles; names; quantities.
+//!
+//! A restriction `left = right` stands for c = left - right = 0. One text may stand for several: a chain `a = b = c` pairs
+//! neighbours (`NAME.1`, `NAME.2`), `equal(*.shape)` sets each equal to the first, and a `*` in the names of an equation
+//! writes it once a level (`NAME.acme`), the same level in every name.
 
-use crate::math::{Matrix, Vector};
+mod body;
+pub mod draft;
+pub mod error;
+mod expand;
+pub mod quantities;
+pub mod system;
+mod vocabulary;
+
+pub use draft::Draft;
+pub use error::RestrictionError;
+pub use quantities::Quantities;
+pub use system::System;
 
 /// What a restriction is for.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
@@ -20,7 +35,7 @@ pub struct Restriction {
     pub name: String,
     /// Its role.
     pub role: Role,
-    /// The equation as shown: `left = right`, patterns expanded.
+    /// The equation as shown: `left = right`, patterns expanded (but for those of sums).
     pub equation: String,
     /// Whether it is linear in the parameters.
     pub linear: bool,
@@ -33,38 +48,4 @@ pub struct Sides {
     pub left: f64,
     /// Right side.
     pub right: f64,
-}
-
-/// All restrictions of a problem, in the order family, maintained, tested.
-#[derive(Debug, Clone, Default)]
-pub struct System {
-    items: Vec<Restriction>,
-    parameters: usize,
-}
-
-impl System {
-    /// The restrictions, in order.
-    pub fn items(&self) -> &[Restriction] {
-        &self.items
-    }
-
-    /// Both sides of each at theta.
-    pub fn sides(&self, _theta: &Vector) -> Vec<Sides> {
-        Vec::new()
-    }
-
-    /// Jacobian of left - right by theta, m by n.
-    pub fn jacobian(&self, _theta: &Vector) -> Matrix {
-        Matrix::zeros(self.items.len(), self.parameters)
-    }
-
-    /// Sum of multiplier times Hessian of left - right, n by n.
-    pub fn curvature(&self, _theta: &Vector, _multipliers: &Vector) -> Matrix {
-        Matrix::zeros(self.parameters, self.parameters)
-    }
-
-    /// The system of those restrictions only for which `keep` holds.
-    pub fn only(&self, keep: impl Fn(&Restriction) -> bool) -> System {
-        System { items: self.items.iter().filter(|r| keep(r)).cloned().collect(), parameters: self.parameters }
-    }
 }
