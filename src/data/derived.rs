@@ -31,7 +31,8 @@ impl Formula {
     /// Reads an expression that gives a number (or, with `condition`, true or false).
     pub fn parse(place: String, text: &str, condition: bool) -> Result<Formula, DataError> {
         let parsed = if condition { parse_condition(text) } else { parse_expression(text) };
-        let wrap = |error| DataError::Expression { place: place.clone(), text: text.to_owned(), error };
+        let wrap =
+            |error| DataError::Expression { place: place.clone(), text: text.to_owned(), error: Box::new(error) };
         let ast = parsed.map_err(wrap)?;
         let mut uses = BTreeMap::new();
         gather(&ast, &mut uses).map_err(wrap)?;
@@ -40,7 +41,7 @@ impl Formula {
 
     /// An error about a place in this expression.
     pub fn fault(&self, error: ExprError) -> DataError {
-        DataError::Expression { place: self.place.clone(), text: self.text.clone(), error }
+        DataError::Expression { place: self.place.clone(), text: self.text.clone(), error: Box::new(error) }
     }
 
     /// Its value in each row.

@@ -25,7 +25,7 @@ pub enum DataError {
         /// The expression as written.
         text: String,
         /// What is wrong with it, and where in it.
-        error: ExprError,
+        error: Box<ExprError>,
     },
     /// A column in use is not there, or there twice.
     #[error("{file}: {what}{}", under(advice))]
@@ -243,7 +243,8 @@ mod tests {
             fault: ExprFault::Unknown("column", "aera".into()),
             advice: Some("nearest name: area".into()),
         };
-        let error = DataError::Expression { place: "data.only".into(), text: "log(x)\naera".into(), error };
+        let error =
+            DataError::Expression { place: "data.only".into(), text: "log(x)\naera".into(), error: Box::new(error) };
         assert_eq!(
             error.to_string(),
             "data.only: no column is called aera\n    aera\n    ^^^^\n    nearest name: area"
