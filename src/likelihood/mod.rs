@@ -2,6 +2,7 @@
 
 #[cfg(test)]
 mod checks;
+pub mod closure;
 mod compose;
 pub mod coordinates;
 mod design;
@@ -17,6 +18,7 @@ mod start;
 mod statement;
 pub mod wanted;
 
+pub use closure::FromFunctions;
 pub use coordinates::Coordinates;
 pub use error::LikelihoodError;
 pub use model::Model;

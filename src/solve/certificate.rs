@@ -1,7 +1,7 @@
 //! Why an answer may be believed.
 
 /// The last word of a certificate.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub enum Verdict {
     /// A strict local maximum under the restrictions.
     StrictMaximum,
@@ -16,6 +16,7 @@ pub enum Verdict {
     /// l grows without bound, or approaches its supremum only at infinity or an open end.
     Unbounded,
     /// The search ended without an answer.
+    #[default]
     Stopped,
 }
 

@@ -1,8 +1,33 @@
 //! The Lagrangian, the Newton iteration, globalisation, edges, starts, certificate.
 
 pub mod certificate;
+pub mod error;
+
+mod confirm;
+mod degenerate;
+mod differences;
+mod equations;
+mod escape;
+mod filter;
+mod flat;
+mod frame;
+mod local;
+mod manifold;
+mod newton;
+mod quadratic;
+mod rank;
+mod restore;
+mod run;
+mod starts;
+mod verdict;
+
+#[cfg(test)]
+mod testing;
+#[cfg(test)]
+mod tests;
 
 pub use certificate::{Certificate, Direction, Verdict};
+pub use error::SolveError;
 
 use crate::likelihood::LogLikelihood;
 use crate::math::Vector;
@@ -15,6 +40,18 @@ pub struct Problem<'a> {
     pub likelihood: &'a dyn LogLikelihood,
     /// The restrictions imposed.
     pub restrictions: &'a System,
+}
+
+/// Maximises the log-likelihood under the restrictions within the parameters' ranges, from the likelihood's own
+/// starts and the `extra` ones (theta; such as the restricted estimate when the unrestricted one is sought).
+///
+/// Newton's iteration on the Lagrangian with exact second derivatives: sequential quadratic steps in the null space
+/// of the restrictions (Nocedal and Wright, *Numerical Optimization*, chapter 18), a filter line search, active edges.
+///
+/// # Errors
+/// A start of the wrong length, or none. Not converging is a verdict of the certificate, with its reason.
+pub fn maximise(problem: Problem, search: &Search, extra: &[Vector]) -> Result<Fit, SolveError> {
+    starts::maximise(problem.likelihood, problem.restrictions, search, extra)
 }
 
 /// How the search is done.

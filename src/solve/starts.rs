@@ -1,0 +1,229 @@
+//! Many starts: which answers they reach, which of those are the same, and which is the best.
+
+use super::equations::Equations;
+use super::error::SolveError;
+use super::frame::Frame;
+use super::newton::{Ended, Newton};
+use super::run::{Outcome, run};
+use super::verdict::{fit, nowhere};
+use super::{Fit, Search, Verdict};
+use crate::likelihood::LogLikelihood;
+use crate::math::Vector;
+
+/// Starts where l may have several maxima.
+const STARTS: usize = 20;
+/// Answers within this many standard errors of each other are one.
+const SAME: f64 = 1e-3;
+/// Log-likelihoods within this, relative to 1 + |l|, are one value.
+const SAME_VALUE: f64 = 1e-8;
+
+/// A point at which searches ended, and how many.
+struct Answer<'a> {
+    newton: Box<Newton<'a>>,
+    reached: usize,
+    collapsed: bool,
+}
+
+/// What the starts came to.
+struct Findings<'a> {
+    frame: &'a Frame<'a>,
+    relabellings: Vec<Vec<usize>>,
+    /// Distinct points where the first-order conditions hold.
+    answers: Vec<Answer<'a>>,
+    /// Searches that ended otherwise.
+    others: Vec<Newton<'a>>,
+    /// Where the restrictions are missed least, of the starts that could not meet them.
+    missed: Option<(Vector, f64)>,
+    undefined: Option<Vector>,
+    collapsed: usize,
+    starts: usize,
+}
+
+/// Searches from all starts, one after the other (a later one that comes near an answer of an earlier one ends
+/// there), and returns the best answer with its certificate.
+pub(super) fn maximise(
+    likelihood: &dyn LogLikelihood,
+    equations: &dyn Equations,
+    search: &Search,
+    extra: &[Vector],
+) -> Result<Fit, SolveError> {
+    let frame = Frame::new(likelihood, equations);
+    let alone = likelihood.concave() && equations.linear();
+    let count = search.starts.unwrap_or(if alone { 1 } else { STARTS });
+    let mut starts = likelihood.starts(count, search.seed);
+    starts.extend(extra.iter().cloned());
+    if let Some(wrong) = starts.iter().find(|s| s.len() != frame.n) {
+        return Err(SolveError::StartLength { found: wrong.len(), expected: frame.n });
+    }
+    let Some(first) = starts.first() else { return Err(SolveError::NoStart) };
+    let mut findings = Findings {
+        frame: &frame,
+        relabellings: harmless(&frame, first),
+        answers: Vec::new(),
+        others: Vec::new(),
+        missed: None,
+        undefined: None,
+        collapsed: 0,
+        starts: starts.len(),
+    };
+    for start in &starts {
+        let known = findings.answers.iter().map(|a| (a.newton.point.phi.clone(), a.newton.local.d.clone())).collect();
+        let outcome = run(&frame, start, search.iterations, known)?;
+        findings.sort_in(outcome);
+    }
+    Ok(findings.best())
+}
+
+impl<'a> Findings<'a> {
+    fn sort_in(&mut self, outcome: Outcome<'a>) {
+        let newton = match outcome {
+            Outcome::Ran(newton) => newton,
+            Outcome::Infeasible { phi, missed } => {
+                if self.missed.as_ref().is_none_or(|m| missed < m.1) {
+                    self.missed = Some((phi, missed));
+                }
+                return;
+            }
+            Outcome::Undefined(phi) => {
+                self.undefined.get_or_insert(phi);
+                return;
+            }
+        };
+        let collapsed = self.frame.likelihood.collapsed(&newton.point.phi).is_some();
+        match newton.ended {
+            Some(Ended::Known(k)) => {
+                self.answers[k].reached += 1;
+                self.collapsed += usize::from(self.answers[k].collapsed);
+            }
+            Some(Ended::Found) if !newton.is_saddle() => {
+                self.collapsed += usize::from(collapsed);
+                match (0..self.answers.len()).find(|&k| self.same(&self.answers[k].newton, &newton)) {
+                    Some(k) => {
+                        self.answers[k].reached += 1;
+                        if newton.local.error() < self.answers[k].newton.local.error() {
+                            self.answers[k].newton = newton;
+                        }
+                    }
+                    None => self.answers.push(Answer { newton, reached: 1, collapsed }),
+                }
+            }
+            _ if collapsed => self.collapsed += 1,
+            _ => self.others.push(*newton),
+        }
+    }
+
+    /// Whether two answers are one, up to a relabelling.
+    fn same(&self, a: &Newton, b: &Newton) -> bool {
+        let scale = a.point.value.abs().max(b.point.value.abs()) + 1.0;
+        if (a.point.value - b.point.value).abs() > SAME_VALUE * scale {
+            return false;
+        }
+        let near = |theta: &Vector| (self.frame.phi(theta) - &a.point.phi).component_div(&a.local.d).amax() < SAME;
+        near(&b.point.theta) || self.relabellings.iter().any(|p| near(&relabelled(&b.point.theta, p)))
+    }
+
+    /// The best answer's fit: the highest l among those that are maxima, a strict one where values tie.
+    fn best(mut self) -> Fit {
+        self.answers.sort_by(|a, b| b.newton.point.value.total_cmp(&a.newton.point.value));
+        let mut maxima: Vec<f64> = Vec::new();
+        for answer in self.answers.iter().filter(|a| !a.collapsed) {
+            maxima.push(answer.newton.point.value);
+        }
+        let mut best: Option<(Fit, usize)> = None;
+        let mut ran_off: Option<Fit> = None;
+        for answer in self.answers.iter().filter(|a| !a.collapsed) {
+            let value = answer.newton.point.value;
+            if best.as_ref().is_some_and(|(b, _)| value < b.log_likelihood - SAME_VALUE * (1.0 + value.abs())) {
+                break;
+            }
+            let fit = fit(self.frame, &answer.newton);
+            match fit.certificate.verdict {
+                Verdict::StrictMaximum => {
+                    best = Some((fit, answer.reached));
+                    break;
+                }
+                Verdict::Unbounded => {
+                    maxima.retain(|&m| m != value);
+                    ran_off.get_or_insert(fit);
+                }
+                _ if best.is_none() => best = Some((fit, answer.reached)),
+                _ => {}
+            }
+        }
+        let (mut fit, reached) = best.or_else(|| ran_off.map(|f| (f, 0))).unwrap_or_else(|| (self.failed(), 0));
+        self.remark(&mut fit);
+        let certificate = &mut fit.certificate;
+        certificate.maxima = maxima;
+        certificate.starts = self.starts;
+        certificate.starts_at_best = reached;
+        certificate.collapsed = self.collapsed;
+        certificate.passes = self.frame.passes();
+        fit
+    }
+
+    /// Where no start came to an answer: the search that says most about why.
+    fn failed(&self) -> Fit {
+        let rank = |n: &Newton| match n.ended {
+            Some(Ended::RanOff(..)) => 0,
+            Some(Ended::Limit | Ended::Stuck) => 1,
+            Some(Ended::Infeasible) => 3,
+            _ => 2,
+        };
+        let best =
+            self.others.iter().min_by(|a, b| rank(a).cmp(&rank(b)).then(b.point.value.total_cmp(&a.point.value)));
+        match (best, &self.missed, &self.undefined) {
+            (Some(newton), _, _) => fit(self.frame, newton),
+            (None, Some((phi, _)), _) => nowhere(self.frame, phi, true),
+            (None, None, Some(phi)) => nowhere(self.frame, phi, false),
+            (None, None, None) => nowhere(self.frame, &Vector::zeros(self.frame.n), false),
+        }
+    }
+
+    /// Says what else the starts met.
+    fn remark(&self, fit: &mut Fit) {
+        let above = |n: &&Newton| {
+            n.local.infeasibility <= 1e-9
+                && n.point.value > fit.log_likelihood + SAME_VALUE * (1.0 + n.point.value.abs())
+        };
+        let higher: Vec<_> = self.others.iter().filter(above).collect();
+        let (off, open): (Vec<_>, Vec<_>) =
+            higher.into_iter().partition(|n| matches!(n.ended, Some(Ended::RanOff(..))));
+        let notes = &mut fit.certificate.notes;
+        if !off.is_empty() && fit.certificate.verdict != Verdict::Unbounded {
+            notes.push(format!("from {} of the starts the log-likelihood rose without end", off.len()));
+        }
+        if !open.is_empty() && fit.certificate.verdict == Verdict::StrictMaximum {
+            notes.push(format!("{} of the starts broke off at a higher log-likelihood than this maximum", open.len()));
+        }
+        if self.missed.is_some() && fit.certificate.verdict != Verdict::Infeasible {
+            notes.push("from some starts the restrictions could not be met".into());
+        }
+    }
+}
+
+fn relabelled(theta: &Vector, permutation: &[usize]) -> Vector {
+    Vector::from_fn(theta.len(), |i, _| theta[permutation[i]])
+}
+
+/// The relabellings that leave restrictions and ranges as they are: the residuals are the same set at two points of
+/// no special kind.
+fn harmless(frame: &Frame, theta: &Vector) -> Vec<Vec<usize>> {
+    let parameters = frame.likelihood.parameters();
+    let residuals = |theta: &Vector| {
+        let mut c: Vec<f64> = frame.sides(theta)?.iter().map(|s| (s.left - s.right).abs()).collect();
+        c.sort_by(f64::total_cmp);
+        Some(c)
+    };
+    let unchanged = |permutation: &Vec<usize>| {
+        let ranges = (0..frame.n).all(|i| parameters[i].range == parameters[permutation[i]].range);
+        ranges
+            && [0.013, 0.027].iter().all(|by| {
+                let odd = Vector::from_fn(frame.n, |j, _| theta[j] * (1.0 + by * (1.0 + (j as f64 * 0.618).fract())));
+                match (residuals(&odd), residuals(&relabelled(&odd, permutation))) {
+                    (Some(a), Some(b)) => a.iter().zip(&b).all(|(x, y)| (x - y).abs() <= 1e-12 * (1.0 + x.abs())),
+                    _ => false,
+                }
+            })
+    };
+    frame.likelihood.relabellings().into_iter().filter(unchanged).collect()
+}
