@@ -6,6 +6,7 @@ mod tiles;
 
 mod harness;
 
+mod bad_input;
 mod datasets;
 mod equivalence;
 mod layers;
