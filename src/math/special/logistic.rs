@@ -44,7 +44,8 @@ pub fn log1mexp(x: f64) -> f64 {
     }
 }
 
-/// log(sum exp(x_i)), shifted by the largest term. Minus infinity for an empty sum; NaN if any term is NaN.
+/// log(sum exp(x_i)), shifted by the largest term: absolute error a few eps of max(1, largest |x_i|). Minus infinity for an empty
+/// sum; NaN if any term is NaN.
 pub fn log_sum_exp(x: &[f64]) -> f64 {
     let mut largest = f64::NEG_INFINITY;
     let mut at = usize::MAX;
@@ -65,7 +66,7 @@ pub fn log_sum_exp(x: &[f64]) -> f64 {
 }
 
 /// log(sum w_i exp(a_i)) of the flat pairs (w_1, a_1, w_2, a_2, ...), weights >= 0. A term of weight 0 contributes nothing
-/// whatever its exponent; NaN for a negative weight or an odd number of values.
+/// whatever its exponent. Absolute error a few eps of max(1, largest |a_i|); NaN for a negative weight or an odd number of values.
 pub fn log_mix(pairs: &[f64]) -> f64 {
     if !pairs.len().is_multiple_of(2) {
         return f64::NAN;

@@ -96,7 +96,7 @@ pub fn inverse_mills(x: f64) -> f64 {
 
 /// The value below which a standard normal falls with probability p; minus and plus infinity at 0 and 1, NaN outside.
 ///
-/// A rational start, then three Halley steps, each of which triples the digits.
+/// A rational start, then three Halley steps (phi' = -x phi), each of which triples the digits.
 pub fn normal_quantile(p: f64) -> f64 {
     if !(0.0..=1.0).contains(&p) {
         return f64::NAN;
@@ -115,11 +115,15 @@ pub fn normal_quantile(p: f64) -> f64 {
     let mut x =
         -(t - (2.515517 + t * (0.802853 + t * 0.010328)) / (1.0 + t * (1.432788 + t * (0.189269 + t * 0.001308))));
     for _ in 0..3 {
-        // Newton on Phi(x) - p with Halley's correction: phi' = -x phi.
-        // Near the middle the distance from one half is the accurate one.
-        let excess = if p > 0.3 { 0.5 * libm::erf(x * FRAC_1_SQRT_2) + (0.5 - p) } else { normal_cdf(x) - p };
-        let step = excess / normal_density(x);
-        x -= step / (1.0 + 0.5 * x * step);
+        x -= if p < 1e-280 {
+            // Where Phi is near the end of the doubles, Newton on its logarithm, nearly straight there.
+            (normal_log_cdf(x) - log(p)) / inverse_mills(x)
+        } else {
+            // Near the middle the distance from one half is the accurate one.
+            let excess = if p > 0.3 { 0.5 * libm::erf(x * FRAC_1_SQRT_2) + (0.5 - p) } else { normal_cdf(x) - p };
+            let step = excess / normal_density(x);
+            step / (1.0 + 0.5 * x * step)
+        };
     }
     x
 }
