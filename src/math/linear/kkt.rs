@@ -149,3 +149,110 @@ fn inertia(d: &Matrix) -> Result<Inertia, Error> {
     }
     Ok((plus, minus, zero))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::Kkt;
+    use crate::math::linear::{pseudo_random, symmetric_eigen};
+    use crate::math::{Error, Matrix, Vector};
+
+    #[test]
+    fn inertia_agrees_with_the_eigenvalues_and_solves_are_accurate() {
+        let mut next = pseudo_random(7);
+        for case in 0..500 {
+            let (n, m) = (1 + case % 7, (case / 7) % 4);
+            let units: Vec<f64> = (0..n).map(|_| 2f64.powf(20.0 * next())).collect();
+            let shift = if case % 3 == 0 { 0.5 } else { 0.0 };
+            let delta = if case % 2 == 0 { 1e-3 } else { 0.0 };
+            if delta == 0.0 && m > n {
+                continue;
+            }
+            let d = Vector::from_fn(n, |i, _| units[i] * units[i]);
+            let plain = Matrix::from_fn(n, n, |_, _| next());
+            let h = Matrix::from_fn(n, n, |i, k| (plain[(i, k)] + plain[(k, i)]) * units[i] * units[k]);
+            let a = Matrix::from_fn(m, n, |_, k| next() * units[k]);
+            let Ok(kkt) = Kkt::new(&h, &a, shift, &d, delta) else { panic!("case {case}") };
+            // The same matrix with the units taken out has the same inertia (Sylvester).
+            let mut whole = Matrix::zeros(n + m, n + m);
+            for i in 0..n {
+                for k in 0..n {
+                    whole[(i, k)] = plain[(i, k)] + plain[(k, i)] + if i == k { shift } else { 0.0 };
+                }
+                for r in 0..m {
+                    whole[(i, n + r)] = a[(r, i)] / units[i];
+                    whole[(n + r, i)] = a[(r, i)] / units[i];
+                }
+            }
+            for r in n..n + m {
+                whole[(r, r)] = -delta;
+            }
+            let Ok((values, _)) = symmetric_eigen(&whole) else { panic!("case {case}") };
+            if values.iter().any(|v| v.abs() < 1e-10) {
+                continue;
+            }
+            let plus = values.iter().filter(|v| **v > 0.0).count();
+            assert_eq!(kkt.inertia(), (plus, n + m - plus, 0), "case {case}");
+            let wanted = Vector::from_fn(n + m, |i, _| next() / if i < n { units[i] } else { 1.0 });
+            let rhs = &kkt.matrix * &wanted;
+            let Some(found) = kkt.solve(&rhs) else { panic!("case {case}") };
+            let condition = values.amax() / values.iter().fold(f64::INFINITY, |l, v| l.min(v.abs()));
+            for i in 0..n + m {
+                let unit = if i < n { units[i] } else { 1.0 };
+                // Normwise backward stable: eps times the condition number in the units' own scale, a factor for the size.
+                assert!(
+                    (found[i] - wanted[i]).abs() * unit < 1e-14 * condition.max(10.0),
+                    "case {case}: {found} {wanted}"
+                );
+            }
+        }
+    }
+
+    #[test]
+    fn a_restricted_least_squares_by_hand() {
+        // min (x^2 + y^2) / 2 with x + y = 1: x = y = 1/2, multiplier -1/2 in this sign convention.
+        let Ok(kkt) = Kkt::new(
+            &Matrix::identity(2, 2),
+            &Matrix::from_element(1, 2, 1.0),
+            0.0,
+            &Vector::from_element(2, 1.0),
+            0.0,
+        ) else {
+            panic!("regular")
+        };
+        assert_eq!(kkt.inertia(), (2, 1, 0));
+        assert!(kkt.is_convex_on_tangent_space());
+        let Some(x) = kkt.solve(&Vector::from_vec(vec![0.0, 0.0, 1.0])) else { panic!("regular") };
+        for (found, wanted) in x.iter().zip([0.5, 0.5, -0.5]) {
+            assert!((found - wanted).abs() < 1e-15);
+        }
+    }
+
+    #[test]
+    fn singular_and_bad_systems() {
+        let ones = Vector::from_element(2, 1.0);
+        let none = Matrix::zeros(0, 2);
+        // A repeated restriction: one zero eigenvalue.
+        let twice = Matrix::from_element(2, 2, 1.0);
+        let Ok(kkt) = Kkt::new(&Matrix::identity(2, 2), &twice, 0.0, &ones, 0.0) else { panic!("finite") };
+        assert_eq!(kkt.inertia(), (2, 1, 1));
+        assert!(!kkt.is_convex_on_tangent_space() && kkt.solve(&Vector::zeros(4)).is_none());
+        // The regularisation makes it regular.
+        let Ok(kkt) = Kkt::new(&Matrix::identity(2, 2), &twice, 0.0, &ones, 1e-8) else { panic!("finite") };
+        assert_eq!(kkt.inertia(), (2, 2, 0));
+        // A flat direction, then lifted by the shift.
+        let Ok(kkt) = Kkt::new(&Matrix::zeros(2, 2), &none, 0.0, &ones, 0.0) else { panic!("finite") };
+        assert_eq!(kkt.inertia(), (0, 0, 2));
+        let Ok(kkt) = Kkt::new(&Matrix::zeros(2, 2), &none, 1.0, &ones, 0.0) else { panic!("finite") };
+        assert_eq!(kkt.inertia(), (2, 0, 0));
+        let bad = Matrix::from_element(2, 2, f64::NAN);
+        assert!(matches!(Kkt::new(&bad, &none, 0.0, &ones, 0.0), Err(Error::NotFinite { .. })));
+        assert!(matches!(Kkt::new(&Matrix::identity(2, 2), &bad, 0.0, &ones, 0.0), Err(Error::NotFinite { .. })));
+        assert!(matches!(Kkt::new(&Matrix::identity(2, 2), &none, f64::NAN, &ones, 0.0), Err(Error::NotFinite { .. })));
+        assert!(matches!(Kkt::new(&Matrix::zeros(2, 3), &none, 0.0, &ones, 0.0), Err(Error::Shape { .. })));
+        assert!(matches!(Kkt::new(&Matrix::identity(3, 3), &twice, 0.0, &ones, 0.0), Err(Error::Shape { .. })));
+        assert!(matches!(
+            Kkt::new(&Matrix::identity(2, 2), &none, 0.0, &Vector::zeros(1), 0.0),
+            Err(Error::Shape { .. })
+        ));
+    }
+}

@@ -19,6 +19,9 @@ pub fn bessel_i(order: f64, x: f64) -> f64 {
     if order == 0.0 && x == 0.0 {
         return 1.0;
     }
+    if x == f64::INFINITY {
+        return sign * x;
+    }
     if sqrt(order * order + x * x) < FAR {
         return sign * series(order, x);
     }
@@ -81,9 +84,6 @@ fn series(order: f64, x: f64) -> f64 {
 /// and Stegun 9.7.7). Written in powers of 1 / sqrt(order^2 + x^2) it is the expansion for large arguments as well: at
 /// order 0 the two agree term by term.
 fn uniform(order: f64, x: f64) -> (f64, f64) {
-    if x == f64::INFINITY {
-        return (0.0, 0.0);
-    }
     let radius = libm::hypot(order, x);
     let exponent = if order == 0.0 { 0.0 } else { order * (order / (radius + x)) - order * asinh(order / x) };
     let p = 1.0 / radius;

@@ -1,7 +1,7 @@
 //! The standard normal law and the error function.
 
 use libm::{exp, log, log1p};
-use std::f64::consts::FRAC_1_SQRT_2;
+use std::f64::consts::{FRAC_1_SQRT_2, FRAC_2_SQRT_PI};
 
 /// log sqrt(2 pi).
 pub(super) const LOG_SQRT_2PI: f64 = 0.918_938_533_204_672_7;
@@ -9,8 +9,6 @@ pub(super) const LOG_SQRT_2PI: f64 = 0.918_938_533_204_672_7;
 const INV_SQRT_2PI: f64 = 0.398_942_280_401_432_7;
 /// What 1/sqrt(2) has beyond its double.
 const FRAC_1_SQRT_2_REST: f64 = -4.833_646_656_726_457e-17;
-/// 2/sqrt(pi).
-const TWO_OVER_SQRT_PI: f64 = 1.128_379_167_095_512_6;
 /// Below this the asymptotic series of the Mills ratio serves: its eighth term is under 3e-15 there, and divided by x^2/2
 /// in the logarithm.
 const TAIL: f64 = -25.0;
@@ -44,7 +42,7 @@ pub(crate) fn erfc_scaled_argument(x: f64) -> f64 {
     }
     let (t, rest) = two_product(x, FRAC_1_SQRT_2);
     let rest = rest + x * FRAC_1_SQRT_2_REST;
-    libm::erfc(t) - rest * TWO_OVER_SQRT_PI * exp(-t * t)
+    libm::erfc(t) - rest * FRAC_2_SQRT_PI * exp(-t * t)
 }
 
 /// Phi(x), the standard normal distribution function, relatively accurate to 1e-15 or so in both tails.

@@ -34,8 +34,9 @@ const FUNCTIONS: &[(&str, Evaluate, Scale, f64)] = &[
     ("inverse_mills", |a| inverse_mills(a[0]), Relative, 3e-15),
     ("normal_quantile", |a| normal_quantile(a[0]), Relative, 2e-15),
     ("normal_log_interval", |a| normal_log_interval(a[0], a[1]), Relative, 4e-15),
-    ("interval_slope_a", |a| normal_interval_slopes(a[0], a[1]).0, Relative, 1e-14),
-    ("interval_slope_b", |a| normal_interval_slopes(a[0], a[1]).1, Relative, 1e-14),
+    // The end farther out falls below the nearer by exp(-t), and t up to 700 carries eps.
+    ("interval_slope_a", |a| normal_interval_slopes(a[0], a[1]).0, Relative, 1e-13),
+    ("interval_slope_b", |a| normal_interval_slopes(a[0], a[1]).1, Relative, 1e-13),
     ("log_logistic", |a| log_logistic(a[0]), Relative, 1e-15),
     ("logistic", |a| logistic(a[0]), Relative, 1e-15),
     ("logit", |a| logit(a[0]), Relative, 1e-15),
@@ -46,8 +47,9 @@ const FUNCTIONS: &[(&str, Evaluate, Scale, f64)] = &[
     // As promised up to order 1000: exponents up to some hundred carry eps each.
     ("bessel_i", |a| bessel_i(a[0], a[1]), Relative, 1e-12),
     ("bessel_i_scaled", |a| bessel_i_scaled(a[0], a[1]), Relative, 1e-12),
-    ("chi_square_upper", |a| tail::chi_square_upper(a[0], a[1]), Relative, 1e-12),
-    ("chi_square_log10_upper", |a| tail::chi_square_log10_upper(a[0], a[1]), Relative, 1e-12),
+    // Over 200 degrees of freedom the exponent, up to 700, carries eps; below, powers and sums of up to 10 sqrt(df) terms.
+    ("chi_square_upper", |a| tail::chi_square_upper(a[0], a[1]), Relative, 2e-13),
+    ("chi_square_log10_upper", |a| tail::chi_square_log10_upper(a[0], a[1]), Relative, 2e-13),
     ("normal_two_sided", |a| tail::normal_two_sided(a[0]), Relative, 2e-15),
 ];
 
@@ -75,19 +77,16 @@ fn every_function_agrees_with_its_reference() {
                 Mixed => wanted.abs().max(1.0),
             };
             let error = if found == wanted { 0.0 } else { (found - wanted).abs() / size };
-            if !(error <= worst.0) {
+            if error > worst.0 || error.is_nan() {
                 worst = (error, arguments, found, wanted);
             }
         }
-        assert!(count > 4, "no reference values for {name}");
-        if !(worst.0 <= tolerance) {
+        assert!(count > 3, "no reference values for {name}");
+        if worst.0 > tolerance || worst.0.is_nan() {
             faults.push(format!(
                 "{name}{:?}: found {:e}, wanted {:e}, error {:.1e} over {tolerance:.0e}",
                 worst.1, worst.2, worst.3, worst.0
             ));
-        }
-        if std::env::var_os("GUYLINE_SHOW_ERRORS").is_some() {
-            faults.push(format!("{name}: {count} values, worst {:.1e} at {:?}", worst.0, worst.1));
         }
     }
     assert!(faults.is_empty(), "\n{}", faults.join("\n"));
@@ -98,5 +97,107 @@ fn every_line_is_looked_at() {
     for line in TABLE.lines() {
         let (name, ..) = parsed(line);
         assert!(FUNCTIONS.iter().any(|f| f.0 == name), "nobody checks {name}");
+    }
+}
+
+#[test]
+fn outside_the_domain_is_not_a_number() {
+    let nan = f64::NAN;
+    for (name, found) in [
+        ("lgamma(-inf)", lgamma(f64::NEG_INFINITY)),
+        ("digamma(0)", digamma(0.0)),
+        ("digamma(-3)", digamma(-3.0)),
+        ("digamma(-inf)", digamma(f64::NEG_INFINITY)),
+        ("polygamma(1, 0)", polygamma(1, 0.0)),
+        ("polygamma(2, -7)", polygamma(2, -7.0)),
+        ("polygamma(2, -inf)", polygamma(2, f64::NEG_INFINITY)),
+        ("logit(-0.1)", logit(-0.1)),
+        ("logit(1.1)", logit(1.1)),
+        ("log1mexp(-1)", log1mexp(-1.0)),
+        ("log_sum_exp", log_sum_exp(&[1.0, nan])),
+        ("log_mix of three", log_mix(&[1.0, 2.0, 3.0])),
+        ("log_mix of a negative weight", log_mix(&[-1.0, 2.0])),
+        ("normal_quantile(-0.1)", normal_quantile(-0.1)),
+        ("normal_quantile(2)", normal_quantile(2.0)),
+        ("normal_log_interval(1, 0)", normal_log_interval(1.0, 0.0)),
+        ("bessel_i(0.5, -1)", bessel_i(0.5, -1.0)),
+        ("bessel_i(-0.5, 1)", bessel_i(-0.5, 1.0)),
+        ("bessel_i(inf, 1)", bessel_i(f64::INFINITY, 1.0)),
+    ] {
+        assert!(found.is_nan(), "{name} = {found}");
+    }
+    let one: [fn(f64) -> f64; 14] = [
+        lgamma,
+        digamma,
+        erf,
+        erfc,
+        normal_cdf,
+        normal_log_cdf,
+        inverse_mills,
+        normal_quantile,
+        normal_log_density,
+        logistic,
+        log_logistic,
+        logit,
+        log1mexp,
+        |x| polygamma(3, x),
+    ];
+    for (i, f) in one.iter().enumerate() {
+        assert!(f(nan).is_nan(), "function {i} of NaN");
+        // None may panic or hang, whatever it is given.
+        for x in
+            [0.0, -0.0, 5e-324, -5e-324, 1e308, -1e308, f64::INFINITY, f64::NEG_INFINITY, -1e17, -4503599627370497.5]
+        {
+            let _ = f(x);
+        }
+    }
+    for (a, b) in [(nan, 1.0), (1.0, nan)] {
+        assert!(normal_log_interval(a, b).is_nan() && bessel_i(a, b).is_nan() && bessel_i_scaled(a, b).is_nan());
+        assert!(normal_interval_slopes(a, b).0.is_nan());
+    }
+}
+
+#[test]
+fn limits() {
+    let (inf, low) = (f64::INFINITY, f64::NEG_INFINITY);
+    for (name, found, wanted) in [
+        ("lgamma(0)", lgamma(0.0), inf),
+        ("lgamma(-2)", lgamma(-2.0), inf),
+        ("lgamma(inf)", lgamma(inf), inf),
+        ("digamma(inf)", digamma(inf), inf),
+        ("polygamma(2, inf)", polygamma(2, inf), 0.0),
+        ("polygamma(0, 1)", polygamma(0, 1.0), digamma(1.0)),
+        ("logistic(-inf)", logistic(low), 0.0),
+        ("logistic(inf)", logistic(inf), 1.0),
+        ("log_logistic(-inf)", log_logistic(low), low),
+        ("log_logistic(inf)", log_logistic(inf), 0.0),
+        ("logit(0)", logit(0.0), low),
+        ("logit(1)", logit(1.0), inf),
+        ("log1mexp(0)", log1mexp(0.0), low),
+        ("log1mexp(inf)", log1mexp(inf), 0.0),
+        ("log_sum_exp()", log_sum_exp(&[]), low),
+        ("log_sum_exp(-inf, -inf)", log_sum_exp(&[low, low]), low),
+        ("log_sum_exp(inf, 1)", log_sum_exp(&[inf, 1.0]), inf),
+        ("log_mix(0, inf, 1, 2)", log_mix(&[0.0, inf, 1.0, 2.0]), 2.0),
+        ("log_mix(0, 1)", log_mix(&[0.0, 1.0]), low),
+        ("log_mix(1, -inf)", log_mix(&[1.0, low]), low),
+        ("normal_cdf(-inf)", normal_cdf(low), 0.0),
+        ("normal_cdf(inf)", normal_cdf(inf), 1.0),
+        ("normal_log_cdf(-inf)", normal_log_cdf(low), low),
+        ("normal_log_cdf(inf)", normal_log_cdf(inf), 0.0),
+        ("inverse_mills(-inf)", inverse_mills(low), inf),
+        ("inverse_mills(inf)", inverse_mills(inf), 0.0),
+        ("normal_quantile(0)", normal_quantile(0.0), low),
+        ("normal_quantile(1)", normal_quantile(1.0), inf),
+        ("normal_log_interval(-inf, inf)", normal_log_interval(low, inf), 0.0),
+        ("normal_log_interval(2, 2)", normal_log_interval(2.0, 2.0), low),
+        ("bessel_i(0, 0)", bessel_i(0.0, 0.0), 1.0),
+        ("bessel_i(0.5, 0)", bessel_i(0.5, 0.0), 0.0),
+        ("bessel_i(50, 0)", bessel_i(50.0, 0.0), 0.0),
+        ("bessel_i(0, inf)", bessel_i(0.0, inf), inf),
+        ("bessel_i_scaled(0, inf)", bessel_i_scaled(0.0, inf), 0.0),
+        ("bessel_i(3, 800)", bessel_i(3.0, 800.0), inf),
+    ] {
+        assert_eq!(found, wanted, "{name}");
     }
 }
