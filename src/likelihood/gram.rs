@@ -82,11 +82,12 @@ fn dots(out: &mut [f64], columns: &[Vec<Block>], block: usize, h: &[f64]) {
     let n = h.len();
     let mut j = 0;
     while j + 4 <= columns.len() {
-        let c = [0, 1, 2, 3].map(|k| &columns[j + k][block].0[..n]);
-        let s = dot4(h, c);
-        for k in 0..4 {
-            out[j + k] += s[k];
-        }
+        let c = |k: usize| &columns[j + k][block].0[..n];
+        let s = dot4(h, c(0), c(1), c(2), c(3));
+        out[j] += s[0];
+        out[j + 1] += s[1];
+        out[j + 2] += s[2];
+        out[j + 3] += s[3];
         j += 4;
     }
     while j < columns.len() {
@@ -95,45 +96,62 @@ fn dots(out: &mut [f64], columns: &[Vec<Block>], block: usize, h: &[f64]) {
     }
 }
 
+// Arrays of fixed length and one accumulator a column: written otherwise the compiler gave up on vector registers, at four
+// times the cost (see the benchmark).
+
 #[inline(always)]
 fn dot1(h: &[f64], x: &[f64]) -> f64 {
     let mut lanes = [0.0; LANES];
-    let (mut a, mut b) = (h.chunks_exact(LANES), x.chunks_exact(LANES));
-    for (a, b) in (&mut a).zip(&mut b) {
+    let ((a, a_rest), (b, b_rest)) = (h.as_chunks::<LANES>(), x.as_chunks::<LANES>());
+    for (a, b) in a.iter().zip(b) {
         for i in 0..LANES {
             lanes[i] += a[i] * b[i];
         }
     }
-    for (i, (&a, &b)) in a.remainder().iter().zip(b.remainder()).enumerate() {
-        lanes[i] += a * b;
-    }
-    reduce(lanes)
+    reduce(lanes) + rest(a_rest, b_rest)
 }
 
 /// Four dot products with one common factor, which is loaded once.
 #[inline(always)]
-fn dot4(h: &[f64], x: [&[f64]; 4]) -> [f64; 4] {
-    let mut lanes = [[0.0; LANES]; 4];
-    let whole = h.len() / LANES * LANES;
-    let (x0, x1, x2, x3) = (&x[0][..h.len()], &x[1][..h.len()], &x[2][..h.len()], &x[3][..h.len()]);
-    let mut at = 0;
-    while at < whole {
-        let a = &h[at..at + LANES];
-        let (p, q, r, s) = (&x0[at..at + LANES], &x1[at..at + LANES], &x2[at..at + LANES], &x3[at..at + LANES]);
+fn dot4(h: &[f64], x0: &[f64], x1: &[f64], x2: &[f64], x3: &[f64]) -> [f64; 4] {
+    let (mut l0, mut l1, mut l2, mut l3) = ([0.0; LANES], [0.0; LANES], [0.0; LANES], [0.0; LANES]);
+    let (a, a_rest) = h.as_chunks::<LANES>();
+    let (c0, r0) = x0.as_chunks::<LANES>();
+    let (c1, r1) = x1.as_chunks::<LANES>();
+    let (c2, r2) = x2.as_chunks::<LANES>();
+    let (c3, r3) = x3.as_chunks::<LANES>();
+    let n = a.len();
+    let (c0, c1, c2, c3) = (&c0[..n], &c1[..n], &c2[..n], &c3[..n]);
+    for k in 0..n {
+        let (a, p, q, r, s) = (&a[k], &c0[k], &c1[k], &c2[k], &c3[k]);
         for i in 0..LANES {
-            lanes[0][i] += a[i] * p[i];
-            lanes[1][i] += a[i] * q[i];
-            lanes[2][i] += a[i] * r[i];
-            lanes[3][i] += a[i] * s[i];
+            l0[i] += a[i] * p[i];
         }
-        at += LANES;
-    }
-    for i in whole..h.len() {
-        for k in 0..4 {
-            lanes[k][i - whole] += h[i] * x[k][i];
+        for i in 0..LANES {
+            l1[i] += a[i] * q[i];
+        }
+        for i in 0..LANES {
+            l2[i] += a[i] * r[i];
+        }
+        for i in 0..LANES {
+            l3[i] += a[i] * s[i];
         }
     }
-    lanes.map(reduce)
+    [
+        reduce(l0) + rest(a_rest, r0),
+        reduce(l1) + rest(a_rest, r1),
+        reduce(l2) + rest(a_rest, r2),
+        reduce(l3) + rest(a_rest, r3),
+    ]
+}
+
+#[inline(always)]
+fn rest(a: &[f64], b: &[f64]) -> f64 {
+    let mut s = 0.0;
+    for (a, b) in a.iter().zip(b) {
+        s += a * b;
+    }
+    s
 }
 
 #[inline(always)]
