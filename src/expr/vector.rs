@@ -3,6 +3,8 @@
 //! Arguments outside the range of the fast path (overflow, subnormal, NaN) are done again one by one with `libm`. At most one
 //! unit in the last place from the exact value on the fast path.
 
+use std::hint::black_box;
+
 /// Partial sums of a reduction. Their number and order are part of the result, so it is the same on every machine.
 pub(super) const LANES: usize = 16;
 
@@ -133,6 +135,8 @@ pub(super) fn log1p_exp_block(out: &mut [f64], a: &[f64]) {
     }
 }
 
+// Lanes pass through `black_box` before they are reduced: otherwise the compiler shapes the loop after the reduction's tree and
+// uses a part of each vector register.
 #[inline(always)]
 fn reduce(l: [f64; LANES]) -> f64 {
     let mut h = [0.0; 8];
@@ -151,7 +155,7 @@ pub(super) fn sum(a: &[f64]) -> f64 {
             lanes[i] += c[i];
         }
     }
-    reduce(lanes) + rest.iter().fold(0.0, |s, x| s + x)
+    reduce(black_box(lanes)) + rest.iter().fold(0.0, |s, x| s + x)
 }
 
 #[inline(always)]
@@ -163,7 +167,7 @@ fn dot_with(a: &[f64], b: &[f64], f: impl Fn(f64, f64) -> f64) -> f64 {
             lanes[i] += f(c[i], d[i]);
         }
     }
-    reduce(lanes) + c_rest.iter().zip(d_rest).fold(0.0, |s, (&c, &d)| s + f(c, d))
+    reduce(black_box(lanes)) + c_rest.iter().zip(d_rest).fold(0.0, |s, (&c, &d)| s + f(c, d))
 }
 
 #[inline(always)]
@@ -200,9 +204,10 @@ pub(super) fn sum_log(a: &[f64]) -> f64 {
         }
     }
     // a block has at most 32 factors a lane, each within [0.7, 1.42): the product stays within 1e-5 and 1e5
+    let (product, exponent) = black_box((product, exponent));
     let mut lanes = [0.0; LANES];
     for i in 0..LANES {
         lanes[i] = exponent[i] * LN2_HIGH + (libm::log(product[i]) + exponent[i] * LN2_LOW);
     }
-    reduce(lanes) + rest.iter().fold(0.0, |s, &x| s + libm::log(x))
+    reduce(black_box(lanes)) + rest.iter().fold(0.0, |s, &x| s + libm::log(x))
 }

@@ -1,5 +1,7 @@
 //! Products of design columns over a block of rows: predictors, gradients and weighted Gram products.
 
+use std::hint::black_box;
+
 use multiversion::multiversion;
 
 use crate::expr::Block;
@@ -96,8 +98,8 @@ fn dots(out: &mut [f64], columns: &[Vec<Block>], block: usize, h: &[f64]) {
     }
 }
 
-// Arrays of fixed length and one accumulator a column: written otherwise the compiler gave up on vector registers, at four
-// times the cost (see the benchmark).
+// Arrays of fixed length, one accumulator a column, and a wall before the final reduction: without them the compiler shapes the
+// loop after the reduction's tree and uses a part of each vector register, at up to four times the cost.
 
 #[inline(always)]
 fn dot1(h: &[f64], x: &[f64]) -> f64 {
@@ -108,7 +110,7 @@ fn dot1(h: &[f64], x: &[f64]) -> f64 {
             lanes[i] += a[i] * b[i];
         }
     }
-    reduce(lanes) + rest(a_rest, b_rest)
+    reduce(black_box(lanes)) + rest(a_rest, b_rest)
 }
 
 /// Four dot products with one common factor, which is loaded once.
@@ -137,6 +139,7 @@ fn dot4(h: &[f64], x0: &[f64], x1: &[f64], x2: &[f64], x3: &[f64]) -> [f64; 4] {
             l3[i] += a[i] * s[i];
         }
     }
+    let (l0, l1, l2, l3) = black_box((l0, l1, l2, l3));
     [
         reduce(l0) + rest(a_rest, r0),
         reduce(l1) + rest(a_rest, r1),
