@@ -14,6 +14,47 @@ impl Graph {
         out
     }
 
+    /// One comparison for every tie at which the node has a kink: abs at zero, two arguments of min or max alike.
+    pub fn ties(&mut self, id: Id) -> Vec<Id> {
+        let (mut todo, mut seen, mut out) = (vec![id], vec![id], Vec::new());
+        while let Some(id) = todo.pop() {
+            let node = self.node(id).clone();
+            let below: Vec<Id> = match &node {
+                Node::Sum(_, t) | Node::Product(t) => t.iter().map(|&(i, _)| i).collect(),
+                Node::Call(_, a) | Node::Shift(a) => a.to_vec(),
+                Node::Choice(a, b, c) => vec![*a, *b, *c],
+                Node::Power(a, b) | Node::Compare(_, a, b) | Node::And(a, b) | Node::Or(a, b) => vec![*a, *b],
+                Node::Not(a) => vec![*a],
+                Node::Constant(_) | Node::Column(_) | Node::Parameter(_) | Node::Predictor(_) => Vec::new(),
+            };
+            match &node {
+                Node::Call(Function::Abs, a) => {
+                    let zero = self.constant(0.0);
+                    out.push(self.compare(Relation::Equal, a[0], zero));
+                }
+                Node::Call(Function::Min | Function::Max, a) => {
+                    for (k, &x) in a.iter().enumerate() {
+                        for &y in &a[..k] {
+                            // a tie counts only where it is the value taken
+                            let (same, top) =
+                                (self.compare(Relation::Equal, x, y), self.compare(Relation::Equal, x, id));
+                            out.push(self.and(same, top));
+                        }
+                    }
+                }
+                _ => {}
+            }
+            for b in below {
+                if !seen.contains(&b) && !self.class(b).is_fixed() {
+                    seen.push(b);
+                    todo.push(b);
+                }
+            }
+        }
+        out.retain(|&t| !self.class(t).is_fixed());
+        out
+    }
+
     fn differentiate(&mut self, id: Id, by: Variable) -> Id {
         let zero = self.constant(0.0);
         if self.class(id).is_fixed() {

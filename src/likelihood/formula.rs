@@ -33,6 +33,10 @@ pub(super) struct Formula {
     pub(super) hessian: Pass,
     pub(super) expected: Option<Pass>,
     pub(super) outer: Pass,
+    /// Counts the rows in which something ties; `None` where nothing can.
+    pub(super) ties: Option<Pass>,
+    /// log f row by row.
+    pub(super) rows: Pass,
     pub(super) layout: Layout,
     /// Computes the layout's columns and fixed sums, from raw columns.
     pub(super) preparation: Program,
@@ -105,15 +109,23 @@ impl Formula {
                 outer.push((u, v, graph.multiply(first[u], first[v])));
             }
         }
+        let predictors = variables.iter().filter(|v| matches!(v, Variable::Predictor(_))).count();
         let mut c = Compiler { graph: &mut graph, layout: Layout::default(), variables: &variables, weighted };
         let value = c.pass(Some(log_density), &[], &[]);
         let gradient = c.pass(Some(log_density), &first, &[]);
         let hessian = c.pass(Some(log_density), &first, &second);
         let expected = expected.map(|e| c.pass(None, &[], &e));
         let outer = c.pass(None, &[], &outer);
+        let ties = c.graph.ties(log_density);
+        let any = c.graph.sum(0.0, &ties.iter().map(|&t| (t, 1.0)).collect::<Vec<_>>());
+        let ties = (!ties.is_empty()).then(|| c.pass(Some(any), &[], &[]));
+        let rows = Pass {
+            program: compile(c.graph, &mut c.layout, &[Output::Row(log_density)], predictors, weighted),
+            ..Pass::default()
+        };
         let layout = c.layout;
         let (preparation, raw) = preparation(&mut graph, &layout, weighted);
         let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&graph, slot)).collect();
-        Formula { value, gradient, hessian, expected, outer, layout, preparation, raw }
+        Formula { value, gradient, hessian, expected, outer, ties, rows, layout, preparation, raw }
     }
 }

@@ -6,11 +6,14 @@ pub mod closure;
 mod compose;
 pub mod coordinates;
 mod design;
+mod designs;
 pub mod error;
 mod formula;
 mod gram;
 pub mod model;
+mod numbering;
 mod part;
+mod plan;
 pub mod prepare;
 mod rows;
 pub mod sample;
@@ -101,6 +104,11 @@ pub trait LogLikelihood: Sync {
     /// position i, the old index. The identity is left out.
     fn relabellings(&self) -> Vec<Vec<usize>> {
         Vec::new()
+    }
+    /// How many cells or bins have an expected count under five at this point, and of how many; `None` where the
+    /// response is neither labels nor bins.
+    fn small_counts(&self, _phi: &Vector) -> Option<(usize, usize)> {
+        None
     }
     /// Whether a kink (a tie of abs, min, max) lies at this point.
     fn kink(&self, _phi: &Vector) -> bool {

@@ -41,6 +41,7 @@ pub(super) enum Which {
     Hessian,
     Expected,
     Outer,
+    Ties,
 }
 
 impl Formula {
@@ -51,6 +52,7 @@ impl Formula {
             Which::Hessian => Some(&self.hessian),
             Which::Expected => self.expected.as_ref(),
             Which::Outer => Some(&self.outer),
+            Which::Ties => self.ties.as_ref(),
         }
     }
 }
@@ -185,6 +187,28 @@ impl Part {
             }
         }
         sums
+    }
+
+    /// log f of each row, in the order of the part.
+    pub(super) fn rows(&self, pass: &Pass, theta: &[f64]) -> Vec<f64> {
+        let program = &pass.program;
+        let local: Vec<f64> = self.map.iter().map(|&i| theta[i]).collect();
+        let scalars = program.scalars(&local);
+        let mut registers = Registers::new(program);
+        let mut none = vec![0.0; program.gathers()];
+        let mut out = Vec::with_capacity(self.store.rows);
+        for block in 0..self.store.blocks() {
+            let n = self.store.rows_in(block);
+            for (k, predictor) in self.predictors.iter().enumerate() {
+                let coefficients: Vec<f64> = predictor.at.iter().map(|&i| theta[i]).collect();
+                let eta = &mut registers.predictor(k)[..n];
+                gram::predict(eta, &predictor.columns, predictor.offset.as_deref(), block, &coefficients);
+            }
+            program.block(&mut registers, &self.store, block, &scalars, &mut none);
+            let scale = program.row_scale(0, &scalars);
+            out.extend(program.row(0, &registers, &self.store, block).iter().map(|x| scale * x));
+        }
+        out
     }
 
     /// Whether the products that never change are known, so that chunks need not compute them.

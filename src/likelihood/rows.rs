@@ -28,6 +28,10 @@ pub(super) struct Rows {
     pub(super) kinds: Vec<RowKind>,
     /// Level of `per`; all 0 without.
     pub(super) level: Vec<u32>,
+    /// A value a row that stands for the response.
+    pub(super) values: Vec<f64>,
+    /// The rows of each level, in order.
+    pub(super) members: Vec<Vec<usize>>,
     /// Levels of `per`; empty without.
     pub(super) levels: Vec<String>,
     pub(super) weights: Option<Vec<f64>>,
@@ -66,15 +70,19 @@ impl Rows {
         self.weights.as_ref().map_or(self.count as f64, |w| w.iter().sum())
     }
 
-    /// A value that stands for the response of a row: itself, the middle of its interval, or the end that is known.
-    pub(super) fn representative(&self, row: usize) -> f64 {
-        let get = |key: &str| self.column(key).map_or(0.0, |c| c.1[row]);
-        match self.kinds[row] {
-            RowKind::Exact => get(Y),
-            RowKind::Above => get(LOWER),
-            RowKind::Below => get(UPPER),
-            RowKind::Between => 0.5 * (get(LOWER) + get(UPPER)),
-        }
+    /// Values that stand for the response: itself, the middle of its interval, or the end that is known.
+    fn representatives(&self) -> Vec<f64> {
+        let get = |key: &str| self.column(key).map(|c| c.1);
+        let (y, lower, upper) = (get(Y), get(LOWER), get(UPPER));
+        let at = |c: Option<&[f64]>, i: usize| c.map_or(0.0, |c| c[i]);
+        (0..self.count)
+            .map(|i| match self.kinds[i] {
+                RowKind::Exact => at(y, i),
+                RowKind::Above => at(lower, i),
+                RowKind::Below => at(upper, i),
+                RowKind::Between => 0.5 * (at(lower, i) + at(upper, i)),
+            })
+            .collect()
     }
 
     /// Moments of the response over some rows, per unit of `size` (exposure or trials).
@@ -82,7 +90,7 @@ impl Rows {
         let mut m = Moments { min: f64::INFINITY, max: f64::NEG_INFINITY, ..Moments::default() };
         let each = rows.map(|i| {
             let s = size.map_or(1.0, |s| s[i]);
-            (self.weight(i) * s, self.representative(i) / s)
+            (self.weight(i) * s, self.values[i] / s)
         });
         for (w, y) in each.clone() {
             m.weight += w;
@@ -132,6 +140,21 @@ fn fault(table: &Table, row: usize, column: &str, found: f64, wanted: &str) -> L
 /// # Errors
 /// Missing columns; values that the response cannot take.
 pub(super) fn read(
+    model: &Model,
+    table: &Table,
+    support: Option<Support>,
+    expressions: &[String],
+) -> Result<Rows, LikelihoodError> {
+    let mut rows = columns(model, table, support, expressions)?;
+    rows.members = vec![Vec::new(); rows.levels.len().max(1)];
+    for (i, &level) in rows.level.iter().enumerate() {
+        rows.members[level as usize].push(i);
+    }
+    rows.values = rows.representatives();
+    Ok(rows)
+}
+
+fn columns(
     model: &Model,
     table: &Table,
     support: Option<Support>,

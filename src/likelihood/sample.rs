@@ -5,7 +5,7 @@ use rayon::prelude::{IntoParallelIterator, ParallelIterator};
 use super::coordinates::Coordinates;
 use super::formula::Formula;
 use super::part::{Part, Which, pairwise};
-use super::prepare::Bound;
+use super::plan::Bound;
 use super::start;
 use super::{Evaluation, Information, LogLikelihood, Order, Parameter};
 use crate::math::{Matrix, Vector};
@@ -25,6 +25,10 @@ pub struct Sample {
     pub(super) mixture: Option<Mixture>,
     pub(super) expected: bool,
     pub(super) collapsed_rows: bool,
+    /// Cells of labels: for each level of `per` its total weight and what each share is bound to.
+    pub(super) cells: Vec<(f64, Vec<Bound>)>,
+    /// For each part: the total weight of its level of `per` if its rows are bins.
+    pub(super) bins: Vec<Option<f64>>,
 }
 
 /// What a mixture needs for its own dangers: collapse and exchange of components.
@@ -96,8 +100,8 @@ impl Sample {
     fn run(&self, which: Which, theta: &[f64]) -> (f64, Vector, Matrix) {
         let n = self.parameters.len();
         let mut value = 0.0;
-        let mut gradient = Vector::zeros(if which == Which::Value { 0 } else { n });
-        let second = !matches!(which, Which::Value | Which::Gradient);
+        let mut gradient = Vector::zeros(if matches!(which, Which::Value | Which::Ties) { 0 } else { n });
+        let second = !matches!(which, Which::Value | Which::Gradient | Which::Ties);
         let mut matrix = if second { Matrix::zeros(n, n) } else { Matrix::zeros(0, 0) };
         let mut tasks = Vec::new();
         for (p, part) in self.parts.iter().enumerate() {
@@ -200,6 +204,27 @@ impl LogLikelihood for Sample {
             }
         }
         None
+    }
+
+    fn kink(&self, phi: &Vector) -> bool {
+        self.formulas.iter().any(|f| f.ties.is_some()) && self.run(Which::Ties, phi.as_slice()).0 > 0.0
+    }
+
+    fn small_counts(&self, phi: &Vector) -> Option<(usize, usize)> {
+        let mut counts: Vec<f64> = Vec::new();
+        for (total, shares) in &self.cells {
+            counts.extend(shares.iter().map(|b| match *b {
+                Bound::Free(i) => total * phi[i],
+                Bound::Known(x) => total * x,
+            }));
+        }
+        for (part, total) in self.parts.iter().zip(&self.bins) {
+            if let Some(total) = total {
+                let log = part.rows(&self.formulas[part.formula].rows, phi.as_slice());
+                counts.extend(log.into_iter().map(|l| total * libm::exp(l)));
+            }
+        }
+        (!counts.is_empty()).then(|| (counts.iter().filter(|&&c| c < 5.0).count(), counts.len()))
     }
 
     fn relabellings(&self) -> Vec<Vec<usize>> {

@@ -2,7 +2,7 @@
 //! them for likelihoods with several maxima.
 
 use super::model::Model;
-use super::prepare::{Bound, LocalPlan, PredictorPlan};
+use super::plan::{Bound, LocalPlan, PredictorPlan};
 use super::rows::{RowKind, Rows};
 use super::statement::{Body, Statement};
 use super::{Coordinates, LikelihoodError, Parameter};
@@ -41,9 +41,9 @@ pub(super) fn theta(
 ) -> Result<Vector, LikelihoodError> {
     let mut phi = Vector::zeros(parameters.len());
     for (level, bound) in shape.bound_locals.iter().enumerate() {
-        let members: Vec<usize> = (0..shape.rows.count).filter(|&i| shape.rows.level[i] as usize == level).collect();
+        let members = &shape.rows.members[level];
         match &shape.statement.body {
-            Body::Density(f) => density(shape, f, level, &members, &mut phi),
+            Body::Density(f) => density(shape, f, level, members, &mut phi),
             Body::Categorical => {
                 let total: f64 = members.iter().map(|&i| shape.rows.weight(i)).sum();
                 let k = bound.len() as f64;
@@ -57,7 +57,7 @@ pub(super) fn theta(
                     set(&mut phi, *b, (count + 0.5) / (total + 0.5 * k));
                 }
             }
-            Body::Mixture(parts) => mixture(shape, parts, level, &members, &mut phi),
+            Body::Mixture(parts) => mixture(shape, parts, level, members, &mut phi),
             Body::Custom(_) => {}
         }
     }
@@ -196,7 +196,7 @@ fn least_squares(
     let step = if pull == 0.0 { 1 } else { (members.len() / 50_000).max(1) };
     let target = |i: usize| {
         let s = size.map_or(1.0, |s| s[i]);
-        let y = (1.0 - pull) * shape.rows.representative(i) / s + pull * moments.mean;
+        let y = (1.0 - pull) * shape.rows.values[i] / s + pull * moments.mean;
         let own = Moments { weight: s, mean: y, variance: moments.variance, min: y, max: y };
         link.forward((f.start)(&own)[0]) - offset.map_or(0.0, |o| o[i])
     };
@@ -248,8 +248,7 @@ fn least_squares(
 
 fn mixture(shape: &Shape, parts: &[(Name, &'static Family)], level: usize, members: &[usize], phi: &mut Vector) {
     let k = parts.len();
-    let mut sorted: Vec<(f64, f64)> =
-        members.iter().map(|&i| (shape.rows.representative(i), shape.rows.weight(i))).collect();
+    let mut sorted: Vec<(f64, f64)> = members.iter().map(|&i| (shape.rows.values[i], shape.rows.weight(i))).collect();
     sorted.sort_by(|a, b| a.0.total_cmp(&b.0));
     let step = (sorted.len() / EM_ROWS).max(1);
     let sorted: Vec<(f64, f64)> = sorted.into_iter().step_by(step).collect();
