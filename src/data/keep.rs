@@ -154,7 +154,7 @@ mod tests {
             (Sort::Nonnegative, "-0.1", "a number, 0 or more"),
             (Sort::Count, "1.5", "a whole number, 0 or more"),
             (Sort::ZeroOne, "2", "0 or 1"),
-            (Sort::Within(crate::math::Range::UNIT), "1.1", "a number in [0, 1]"),
+            (Sort::CountUpTo(3.0), "4", "a whole number from 0 to 3"),
         ] {
             let text = format!("a,w\n1,1\n{bad},1\n{bad},0\n");
             let found = error(&text, &Request { weight: Some("w".into()), ..request(&[("a", sort)]) });

@@ -1,7 +1,5 @@
 //! What is asked of the reader.
 
-use crate::math::Range;
-
 /// What the columns must hold, which rows are kept, and how cells are written.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Request {
@@ -98,8 +96,8 @@ pub enum Sort {
     Count,
     /// 0 or 1.
     ZeroOne,
-    /// Numbers in a range.
-    Within(Range),
+    /// Whole numbers from 0 to this one.
+    CountUpTo(f64),
     /// Labels, whatever they look like.
     Category,
     /// Numbers if every cell in use is one, labels if most are not; mostly numbers with some texts is a fault.
@@ -119,7 +117,7 @@ impl Sort {
             Sort::Nonnegative => x >= 0.0,
             Sort::Count => x >= 0.0 && x.fract() == 0.0,
             Sort::ZeroOne => x == 0.0 || x == 1.0,
-            Sort::Within(range) => range.contains(x),
+            Sort::CountUpTo(most) => (0.0..=*most).contains(&x) && x.fract() == 0.0,
             Sort::Category | Sort::Either | Sort::LowerEnd | Sort::UpperEnd => true,
         }
     }
@@ -132,10 +130,7 @@ impl Sort {
             Sort::Nonnegative => "a number, 0 or more".into(),
             Sort::Count => "a whole number, 0 or more".into(),
             Sort::ZeroOne => "0 or 1".into(),
-            Sort::Within(r) => {
-                let (open, close) = (if r.low_closed { '[' } else { '(' }, if r.high_closed { ']' } else { ')' });
-                format!("a number in {open}{}, {}{close}", r.low, r.high)
-            }
+            Sort::CountUpTo(most) => format!("a whole number from 0 to {most}"),
             Sort::Category | Sort::Either => "a label".into(),
             Sort::LowerEnd => "a number, or an open end (empty or -inf)".into(),
             Sort::UpperEnd => "a number, or an open end (empty or inf)".into(),

@@ -9,7 +9,6 @@ use crate::family::listing;
 use crate::family::{Family, Support};
 use crate::likelihood::Model;
 use crate::likelihood::model::{Amount, Form, Response};
-use crate::math::Range;
 
 /// The columns a model uses, and what must hold between them.
 pub fn wanted(study: &Study) -> (Vec<Wanted>, Vec<Pair>) {
@@ -36,8 +35,7 @@ pub fn wanted(study: &Study) -> (Vec<Wanted>, Vec<Pair>) {
                 }
             }
             (Amount::Number(n), Response::Column(count)) if model.components.is_empty() => {
-                let range = Range { low: 0.0, high: *n, low_closed: true, high_closed: true };
-                want(count, Sort::Within(range));
+                want(count, Sort::CountUpTo(*n));
             }
             (Amount::Number(_), _) => {}
         }
