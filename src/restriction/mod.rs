@@ -5,6 +5,7 @@
 //! writes it once a level (`NAME.acme`), the same level in every name.
 
 mod body;
+mod compile;
 pub mod draft;
 pub mod error;
 mod expand;
