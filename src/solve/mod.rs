@@ -18,6 +18,7 @@ mod quadratic;
 mod rank;
 mod restore;
 mod run;
+mod second;
 mod starts;
 mod verdict;
 

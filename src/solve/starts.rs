@@ -3,8 +3,10 @@
 use super::equations::Equations;
 use super::error::SolveError;
 use super::frame::Frame;
+use super::local::scale;
 use super::newton::{Ended, Newton};
 use super::run::{Outcome, run};
+use super::second::second_opinion;
 use super::verdict::{fit, nowhere};
 use super::{Fit, Search, Verdict};
 use crate::likelihood::LogLikelihood;
@@ -71,7 +73,12 @@ pub(super) fn maximise(
         let outcome = run(&frame, start, search.iterations, known)?;
         findings.sort_in(outcome);
     }
-    Ok(findings.best())
+    let mut fit = findings.best();
+    if search.second_opinion && fit.certificate.verdict == Verdict::StrictMaximum {
+        ask(&frame, &mut fit);
+    }
+    fit.certificate.passes = frame.passes();
+    Ok(fit)
 }
 
 impl<'a> Findings<'a> {
@@ -157,7 +164,6 @@ impl<'a> Findings<'a> {
         certificate.starts = self.starts;
         certificate.starts_at_best = reached;
         certificate.collapsed = self.collapsed;
-        certificate.passes = self.frame.passes();
         fit
     }
 
@@ -198,6 +204,29 @@ impl<'a> Findings<'a> {
         if self.missed.is_some() && fit.certificate.verdict != Verdict::Infeasible {
             notes.push("from some starts the restrictions could not be met".into());
         }
+    }
+}
+
+/// Asks for a second opinion; one that differs fails the certificate.
+fn ask(frame: &Frame, fit: &mut Fit) {
+    let Some(point) = frame.point(&fit.phi) else { return };
+    let opinion = second_opinion(frame, &point.phi, point.value, &scale(&point), &point.jacobian);
+    let certificate = &mut fit.certificate;
+    certificate.second_opinion = Some(opinion.agrees);
+    if !opinion.agrees {
+        let named = |theta: &Vector| {
+            let parts: Vec<String> =
+                theta.iter().enumerate().map(|(j, x)| format!("{} = {x:.8}", frame.name(j))).collect();
+            parts.join(", ")
+        };
+        certificate.verdict = Verdict::Stopped;
+        certificate.reason = Some(format!(
+            "a second method ended elsewhere: log-likelihood {:.8} at {}; this one {:.8} at {}",
+            opinion.value,
+            named(&opinion.theta),
+            fit.log_likelihood,
+            named(&fit.theta)
+        ));
     }
 }
 

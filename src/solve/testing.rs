@@ -249,9 +249,9 @@ impl Case {
         if self.concave { l.concave() } else { l }
     }
 
-    /// The fit from the starts given only.
+    /// The fit from the starts given only, with a second opinion.
     pub fn fit(&self) -> Fit {
-        self.search(&Search { starts: Some(self.starts.len()), ..Search::default() })
+        self.search(&Search { starts: Some(self.starts.len()), second_opinion: true, ..Search::default() })
     }
 
     pub fn search(&self, search: &Search) -> Fit {
