@@ -78,3 +78,29 @@ fn row(cells: &[String]) -> String {
     };
     cells.iter().map(quoted).collect::<Vec<_>>().join(",") + "\n"
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::sample;
+    use super::*;
+
+    #[test]
+    fn one_line_a_fit() {
+        let mut north = sample::good(&["a", "b,c"]);
+        north.group = Some(vec![("kiln".into(), "north \"1\"".into())]);
+        let mut south = sample::failed();
+        south.group = Some(vec![("kiln".into(), "south".into())]);
+        let text = render(&[north, south]);
+        let lines: Vec<&str> = text.lines().collect();
+        assert_eq!(
+            lines[0],
+            "kiln,verdict,rows_used,weight_total,log_likelihood,score_chi_square,score_df,score_p,score_p_adjusted,\
+             a.value,a.se,\"b,c.value\",\"b,c.se\",depth.value,depth.se,spread.value,spread.se,\
+             shares.pull,shares.pull_se,shares.p,same_slope.1.pull,same_slope.1.pull_se,same_slope.1.p"
+        );
+        assert!(lines[1].starts_with("\"north \"\"1\"\"\",strict maximum,240,1152.5,-77.3655441898635,9.95,1,0.00160"));
+        assert!(lines[1].ends_with(",,0.52,0.0451,0.0,0.0,,,,,240.0,,,-41.23,13.07,0.0016"));
+        assert_eq!(lines[2], "south,flat,240,1152.5,-77.3655441898635,,,,,,,,,,,,,,,,,,");
+        assert_eq!(lines.len(), 3);
+    }
+}

@@ -1,8 +1,8 @@
 //! What is said when there is no trustworthy maximum: why, what to do, and the best point, which is no estimate.
 
 use super::Document;
-use super::number::{short, tiny};
-use super::words::wrap;
+use super::number::{short, tiny, trimmed};
+use super::words::{sentence, wrap};
 use crate::solve::{Direction, Verdict};
 
 pub(super) fn section(document: &Document) -> String {
@@ -25,7 +25,7 @@ pub(super) fn section(document: &Document) -> String {
         out.push_str("\nWhat is known all the same?\n");
         for direction in &c.identified {
             let se = direction.se.map_or_else(String::new, |se| format!(", standard error {}", short(se, 4)));
-            let line = format!("{} is {}{se}", combination(direction, &names), short(direction.value, 6));
+            let line = format!("{} is {}{se}", combination(direction, &names), trimmed(direction.value, 6));
             out.push_str(&wrap(&line, 2, true));
         }
     }
@@ -41,13 +41,9 @@ pub(super) fn section(document: &Document) -> String {
     out.push_str(&wrap(&status, 2, false));
     let width = names.iter().map(|n| n.chars().count()).filter(|&n| n <= 60).max().unwrap_or(0);
     for (name, &x) in names.iter().zip(block.fit.theta.iter()) {
-        out.push_str(&format!("    {name:<width$}  {}\n", short(x, 6)));
+        out.push_str(&format!("    {name:<width$}  {}\n", trimmed(x, 6)));
     }
     out
-}
-
-fn sentence(text: &str) -> String {
-    if text.ends_with(['.', '!', '?']) { text.to_string() } else { format!("{text}.") }
 }
 
 /// `0.71 a - 0.71 b`
@@ -61,7 +57,7 @@ fn combination(direction: &Direction, names: &[&str]) -> String {
             (_, true) => " - ",
         };
         let name = names.get(j).copied().unwrap_or("?");
-        let size = short(weight.abs(), 3);
+        let size = trimmed(weight.abs(), 3);
         out.push_str(&if size == "1" { format!("{sign}{name}") } else { format!("{sign}{size} {name}") });
     }
     out

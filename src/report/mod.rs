@@ -9,6 +9,10 @@ mod failure;
 pub mod json;
 pub mod number;
 mod object;
+#[cfg(test)]
+mod sample;
+#[cfg(test)]
+mod schema;
 pub mod text;
 pub mod words;
 

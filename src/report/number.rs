@@ -29,6 +29,16 @@ pub fn short(x: f64, digits: usize) -> String {
     }
 }
 
+/// As [`short`], without the zeros at the end of a decimal fraction: for values that were given, not computed.
+pub fn trimmed(x: f64, digits: usize) -> String {
+    let text = short(x, digits);
+    if text.contains('.') && !text.contains('e') {
+        text.trim_end_matches('0').trim_end_matches('.').to_string()
+    } else {
+        text
+    }
+}
+
 /// A probability: two significant digits, three decimals close to 1, an exponent below 1e-4; where it underflows, from
 /// its decimal logarithm.
 pub fn probability(p: f64, log10: f64) -> String {
@@ -93,7 +103,7 @@ mod tests {
             (12.0, "12"),
             (-41.2345, "-41.23"),
             (0.00123456, "0.001235"),
-            (9.99996, "10.000"),
+            (9.99996, "10.00"),
             (123456.7, "123457"),
             (1.5e-7, "1.5e-7"),
             (-2.34567e12, "-2.346e12"),
@@ -101,6 +111,13 @@ mod tests {
         ];
         for (x, text) in cases {
             assert_eq!(short(x, 4), text);
+        }
+    }
+
+    #[test]
+    fn given_values_lose_their_zeros() {
+        for (x, text) in [(1152.5, "1152.5"), (1200.0, "1200"), (0.25, "0.25"), (1.5e-9, "1.5e-9")] {
+            assert_eq!(trimmed(x, 7), text);
         }
     }
 

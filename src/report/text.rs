@@ -1,8 +1,8 @@
 //! The result as text: answers to questions, in the order in which a reader has them.
 
 use super::estimates;
-use super::number::{count, probability, short, tiny};
-use super::words::{how_often, list, stance, wrap};
+use super::number::{count, probability, short, tiny, trimmed};
+use super::words::{how_often, list, sentence, stance, wrap};
 use super::{CAUTION, Document, failure};
 use crate::infer::{Block, Multiplier, Outcome, Test};
 use crate::likelihood::Information;
@@ -50,7 +50,7 @@ fn fitted(document: &Document) -> String {
     let weight = if data.weight_total == data.rows_used as f64 || data.file.is_none() {
         String::new()
     } else {
-        format!(", total weight {}", short(data.weight_total, 7))
+        format!(", total weight {}", trimmed(data.weight_total, 9))
     };
     let dropped = if data.rows_dropped > 0 {
         format!(" ({} read, {} left out)", data.rows_read, data.rows_dropped)
@@ -69,7 +69,7 @@ fn fitted(document: &Document) -> String {
         (h, t) => format!("{} always imposed and {t} put to the test", count(h, "restriction")),
     };
     let parameters = count(model.parameters.len(), "parameter");
-    out.push_str(&wrap(&format!("{source}{weight}{dropped}; {parameters}, {imposed}."), 2, true));
+    out.push_str(&wrap(&format!("{source}{weight}{dropped}; {parameters}, {imposed}."), 2, false));
     out
 }
 
@@ -79,6 +79,9 @@ fn restrictions(block: &Block) -> String {
     let held: Vec<&Multiplier> = block.multipliers.iter().filter(|m| m.role != Role::Tested).collect();
     if !tested.is_empty() {
         out.push_str("How hard do the data pull at each tested restriction?\n");
+        let explain = "A pull is the slope of the log-likelihood in the right-hand side: raise that by a small d, and the \
+                       log-likelihood rises by about d times the pull.";
+        out.push_str(&wrap(explain, 2, false));
         for m in tested {
             out.push_str(&wrap(&format!("{}: {}", m.name, m.equation), 2, true));
             out.push_str(&pull(m));
@@ -186,14 +189,14 @@ fn certificate(block: &Block) -> String {
     say.push(format!("The log-likelihood is {}.", short(block.fit.log_likelihood, 8)));
     if c.restrictions > 0 {
         let rank = if c.rank == c.restrictions {
-            format!("{} independent", if c.rank == 1 { "it is".to_string() } else { format!("all {} are", c.rank) })
+            if c.rank == 1 { "it is regular there".to_string() } else { "they are independent there".to_string() }
         } else {
-            format!("{} of {} are independent", c.rank, c.restrictions)
+            format!("{} of the {} are independent there", c.rank, c.restrictions)
         };
         let condition = c.condition.map_or_else(String::new, |k| format!(" (condition {})", short(k, 2)));
         let one = c.restrictions == 1;
         say.push(format!(
-            "{} to {}, and {rank}{condition}.",
+            "{} to {} and {rank}{condition}.",
             if one { "The restriction holds" } else { "The restrictions hold" },
             tiny(c.feasibility)
         ));
@@ -232,16 +235,61 @@ fn certificate(block: &Block) -> String {
 fn cautions(outcome: &Outcome) -> String {
     let mut out = String::from("What should be kept in mind?\n");
     for warning in &outcome.warnings {
-        let mut message = warning.message.clone();
-        if let Some(first) = message.get(..1) {
-            let upper = first.to_uppercase();
-            // Names keep their case: only a lower-case English word is made to begin a sentence.
-            if message.split_whitespace().next().is_some_and(|word| word.chars().all(|c| c.is_ascii_lowercase())) {
-                message.replace_range(..1, &upper);
-            }
-        }
-        out.push_str(&wrap(&format!("{message} ({}).", warning.code), 2, true));
+        out.push_str(&wrap(&format!("{} ({})", sentence(&warning.message), warning.code), 2, true));
     }
     out.push_str(&wrap(CAUTION, 2, false));
     out
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::{sample, words};
+    use super::*;
+
+    #[test]
+    fn fits_the_page_whatever_the_names() {
+        let long: Vec<String> =
+            (0..60).map(|i| format!("{}.level_{i}", "strength.'a rather long name' ".repeat(i % 3 + 1))).collect();
+        let long: Vec<&str> = long.iter().map(String::as_str).collect();
+        for document in [sample::good(&["a", "b"]), sample::good(&long), sample::failed()] {
+            let text = render(&document);
+            for line in text.lines() {
+                // A name alone on its line may be as long as its author made it.
+                let is_name = long.iter().any(|n| n.trim() == line.trim());
+                assert!(line.chars().count() <= words::WIDTH || is_name, "{line}");
+                assert_eq!(line, line.trim_end());
+            }
+            for name in &document.model.parameters {
+                assert!(text.contains(&name.name));
+            }
+        }
+    }
+
+    #[test]
+    fn a_failed_fit_prints_no_estimate() {
+        let text = render(&sample::failed());
+        assert!(text.contains("not an estimate"));
+        assert!(text.contains("What can be done?"));
+        for never in ["standard error 13", "chi-square 9", "Low and high"] {
+            assert!(!text.contains(never), "{never}");
+        }
+    }
+
+    #[test]
+    fn a_good_fit_reads_as_intended() {
+        let text = render(&sample::good(&["rate.north", "rate.middle", "rate.south"]));
+        if std::env::var_os("SHOW").is_some() {
+            panic!("{text}\n{}", render(&sample::failed()));
+        }
+        for wanted in [
+            "pull -41.23, standard error 13.07, 3.2 times it, p 0.0016\n",
+            "the data want the left side smaller",
+            "240 rows of flaws.csv, total weight 1152.5 (243 read, 3 left out); 3 parameters, 1 restriction always imposed",
+            "on the lower end of its range",
+            "score test: chi-square 9.950 on 1 degree of freedom, p 0.0016",
+            CAUTION.split(';').next().unwrap(),
+        ] {
+            assert!(text.replace("\n  ", " ").contains(wanted) || text.contains(wanted), "{wanted}\n{text}");
+        }
+    }
 }

@@ -41,6 +41,19 @@ pub fn list(items: &[&str], most: usize) -> String {
     }
 }
 
+/// The text as a sentence: a capital, unless it begins with a name (anything but a lower-case word), and a full stop.
+pub fn sentence(text: &str) -> String {
+    let mut out = text.trim().to_string();
+    let first = out.split_whitespace().next().unwrap_or_default();
+    if first.chars().all(|c| c.is_ascii_lowercase()) {
+        out = out.get(..1).map(str::to_uppercase).unwrap_or_default() + out.get(1..).unwrap_or_default();
+    }
+    if !out.is_empty() && !out.ends_with(['.', '!', '?']) {
+        out.push('.');
+    }
+    out
+}
+
 /// How often chance alone does it: `38 times in 100`, `17 times in 10,000`, `less than once in a million`.
 pub fn how_often(p: f64) -> String {
     if p < 1e-6 {
