@@ -9,4 +9,7 @@ pub enum InferError {
     /// Expected or outer-product information was asked for and the likelihood has none.
     #[error("this likelihood has no {0} information; ask for {1} instead")]
     NoInformation(&'static str, &'static str),
+    /// The search was given something it cannot work with.
+    #[error(transparent)]
+    Solve(#[from] crate::solve::SolveError),
 }

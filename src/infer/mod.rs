@@ -1,14 +1,25 @@
 //! Covariances, multipliers, score, likelihood-ratio and Wald tests, warnings.
 
+mod block;
+mod covariance;
 mod error;
+mod information;
 mod kind;
+mod labelling;
+mod likelihood_ratio;
+mod multipliers;
 mod options;
-mod tail;
+mod point;
+mod release;
+mod run;
+mod score;
 mod test;
+mod wald;
 mod warning;
 
 pub use error::InferError;
 pub use options::{Options, Tests};
+pub use run::run;
 pub use test::Test;
 pub use warning::Warning;
 

@@ -1,6 +1,6 @@
 //! A chi-square test.
 
-use super::tail;
+use crate::math::tail::{chi_square_log10_upper, chi_square_upper};
 
 /// A chi-square test.
 #[derive(Debug, Clone, PartialEq)]
@@ -18,7 +18,12 @@ pub struct Test {
 impl Test {
     /// The test of this statistic.
     pub fn new(chi_square: f64, df: usize) -> Test {
-        let (p, log10_p) = tail::chi_square(chi_square, df);
-        Test { chi_square, df, p, log10_p }
+        let df_as_float = df as f64;
+        Test {
+            chi_square,
+            df,
+            p: chi_square_upper(chi_square, df_as_float),
+            log10_p: chi_square_log10_upper(chi_square, df_as_float),
+        }
     }
 }

@@ -1,6 +1,6 @@
 //! What should be said beside the numbers, each with a stable code.
 
-use super::{Block, Options};
+use super::{Block, Tests};
 use crate::likelihood::{Information, LogLikelihood};
 use crate::restriction::{Restriction, Role, System};
 use crate::solve::Fit;
@@ -197,15 +197,15 @@ pub(super) fn from_writing(system: &System, information: Information, wald: bool
 
 /// Tests that were wanted and cannot be given.
 pub(super) fn not_available(
-    wanted: &Options,
+    wanted: Tests,
     score: Option<&str>,
     lr: Option<&str>,
     wald: Option<&str>,
 ) -> Vec<Warning> {
     [
-        (wanted.tests.score, "score test", score),
-        (wanted.tests.lr, "likelihood-ratio test", lr),
-        (wanted.tests.wald, "Wald test", wald),
+        (wanted.score, "score test", score),
+        (wanted.lr, "likelihood-ratio test", lr),
+        (wanted.wald, "Wald test", wald),
     ]
     .into_iter()
     .filter_map(|(wanted, name, reason)| reason.filter(|_| wanted).map(|reason| (name, reason)))

@@ -1,0 +1,60 @@
+//! A fit with what is inferred from it, or with the reason why nothing is.
+
+use super::covariance::{covariance, delta, estimate, estimates};
+use super::point::Point;
+use super::{Block, Estimate, Multiplier};
+use crate::likelihood::Information;
+use crate::restriction::Quantities;
+use crate::solve::Fit;
+
+/// Estimates, covariance and quantities at a maximum. `tested`: whether the fit imposes the tested restrictions.
+pub(super) fn of_maximum(
+    point: &Point,
+    kind: Information,
+    tested: bool,
+    quantities: &Quantities,
+    quantile: f64,
+    multipliers: Vec<Multiplier>,
+) -> Block {
+    let (matrix, reason) = match covariance(point, kind, tested) {
+        Ok(matrix) => (Some(matrix), None),
+        Err(reason) => (None, Some(reason)),
+    };
+    let names: Vec<&str> = point.likelihood.parameters().iter().map(|p| p.name.as_str()).collect();
+    let values = quantities.values(&point.fit.theta);
+    let gradients = quantities.gradient(&point.fit.theta);
+    let quantity = |(i, name): (usize, &String)| -> Estimate {
+        let variance = matrix.as_ref().map(|c| delta(&gradients.row(i).transpose(), c));
+        estimate(name, values[i], variance, quantile, None)
+    };
+    Block {
+        estimates: estimates(&names, point.fit, matrix.as_ref(), quantile),
+        quantities: quantities.names().iter().enumerate().map(quantity).collect(),
+        covariance: matrix,
+        multipliers,
+        reason,
+        fit: point.fit.clone(),
+    }
+}
+
+/// A fit without a trustworthy maximum: nothing is printed as an estimate, multipliers included.
+pub(super) fn of_failure(fit: Fit, reason: &str, multipliers: Vec<Multiplier>) -> Block {
+    let without = |line: Multiplier| Multiplier {
+        value: None,
+        se: None,
+        z: None,
+        p: None,
+        gap: None,
+        reason: Some(reason.to_string()),
+        gap_reason: Some(reason.to_string()),
+        ..line
+    };
+    Block {
+        fit,
+        estimates: Vec::new(),
+        covariance: None,
+        quantities: Vec::new(),
+        multipliers: multipliers.into_iter().map(without).collect(),
+        reason: Some(reason.to_string()),
+    }
+}
