@@ -16,9 +16,11 @@ pub(super) fn statistic(restricted: &Fit, unrestricted: &Fit) -> Option<f64> {
 /// The test. On an edge it stands if it is finite and the tested point is interior (Self and Liang 1987).
 pub(super) fn test(restricted: &Fit, unrestricted: &Fit, df: usize, tested_on_edge: bool) -> Result<Test, String> {
     if tested_on_edge && !unrestricted.edges.is_empty() {
-        return Err("both the tested point and the unrestricted estimate are on an edge of the parameters' ranges, where \
+        return Err(
+            "both the tested point and the unrestricted estimate are on an edge of the parameters' ranges, where \
                     the likelihood ratio has no chi-square law"
-            .to_string());
+                .to_string(),
+        );
     }
     match statistic(restricted, unrestricted) {
         Some(ratio) if ratio.is_finite() => Ok(Test::new(ratio, df)),

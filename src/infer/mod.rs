@@ -14,6 +14,8 @@ mod release;
 mod run;
 mod score;
 mod test;
+#[cfg(test)]
+mod tests;
 mod wald;
 mod warning;
 

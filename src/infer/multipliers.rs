@@ -1,7 +1,7 @@
 //! Multipliers with their standard errors: which restriction is to blame, and in which direction.
 
-use super::release::Release;
 use super::Multiplier;
+use super::release::Release;
 use crate::math::Matrix;
 use crate::math::tail::normal_two_sided;
 use crate::restriction::{Role, Sides, System};

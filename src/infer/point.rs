@@ -109,7 +109,12 @@ impl<'a> Point<'a> {
 
     /// Z (Z' I Z)^-1 Z' with Z the free directions under `rows`, and the filling. `Err` says in words that the matrix is
     /// not positive definite there, and which kinds would serve.
-    pub fn inverse(&self, rows: &Matrix, kind: Information, multipliers: &Vector) -> Result<(Matrix, Sandwich), String> {
+    pub fn inverse(
+        &self,
+        rows: &Matrix,
+        kind: Information,
+        multipliers: &Vector,
+    ) -> Result<(Matrix, Sandwich), String> {
         let parts = sandwich(self, kind, multipliers)?;
         match projected_inverse(rows, &parts.bread) {
             Ok(c) => Ok((c, parts)),
@@ -122,7 +127,8 @@ impl<'a> Point<'a> {
                     })
                     .map(Information::text)
                     .collect();
-                let name = if kind == Information::Robust { "observed (the bread of the robust form)" } else { kind.text() };
+                let name =
+                    if kind == Information::Robust { "observed (the bread of the robust form)" } else { kind.text() };
                 let advice = match serving.as_slice() {
                     [] => "no other kind serves here either: free directions are not identified".to_string(),
                     some => format!("{} information would serve", some.join(" or ")),

@@ -36,7 +36,10 @@ impl Release {
         let factor = |x: &Matrix, what: &str| {
             let cholesky = super::point::symmetric(x).cholesky();
             cholesky.ok_or_else(|| {
-                format!("{what} of the tested restrictions is singular with {} information; another kind may serve", kind.text())
+                format!(
+                    "{what} of the tested restrictions is singular with {} information; another kind may serve",
+                    kind.text()
+                )
             })
         };
         let v_factor = factor(&v, "the covariance")?;

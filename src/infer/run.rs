@@ -4,9 +4,7 @@ use super::information::sandwich;
 use super::point::Point;
 use super::release::Release;
 use super::warning::{self, Warning};
-use super::{
-    InferError, Options, Outcome, Test, block, labelling, likelihood_ratio, multipliers, score, wald,
-};
+use super::{InferError, Options, Outcome, Test, block, labelling, likelihood_ratio, multipliers, score, wald};
 use crate::likelihood::{Information, LogLikelihood};
 use crate::math::Vector;
 use crate::restriction::{Quantities, Role, System};
@@ -136,7 +134,9 @@ impl Job<'_> {
         };
 
         let score = asked(wanted.score).and_then(|()| {
-            let release = release.as_ref().map_or_else(|| Err(NOTHING_TESTED.to_string()), |r| r.as_ref().map_err(Clone::clone))?;
+            let release = release
+                .as_ref()
+                .map_or_else(|| Err(NOTHING_TESTED.to_string()), |r| r.as_ref().map_err(Clone::clone))?;
             let routes = score::Routes::new(&point, kind, release);
             warnings.extend(routes.disagreement());
             score::test(&routes, df)
@@ -150,10 +150,12 @@ impl Job<'_> {
         };
         let failed = unrestricted.is_ok() && usable.is_err();
         if let (true, Err(reason)) = (failed, &usable) {
-            let message = format!("{reason}, so there is no likelihood-ratio and no Wald test; the score test does not need it");
+            let message =
+                format!("{reason}, so there is no likelihood-ratio and no Wald test; the score test does not need it");
             warnings.push(Warning::new("unrestricted-failed", message));
         }
-        let whole = usable.as_ref().map_or_else(|_| Vector::zeros(self.system.items().len()), |f| self.spread(&f.multipliers));
+        let whole =
+            usable.as_ref().map_or_else(|_| Vector::zeros(self.system.items().len()), |f| self.spread(&f.multipliers));
         let free = usable.as_ref().map(|f| Point::new(likelihood, self.system, f, &whole)).map_err(Clone::clone);
         let sides = free.as_ref().map(|f| self.system.sides(&f.fit.theta)).map_err(Clone::clone);
 
@@ -169,7 +171,8 @@ impl Job<'_> {
         warnings.extend(warning::from_search(&fit, unrestricted.as_ref().ok()));
         warnings.extend(warning::from_writing(self.system, kind, wald.is_ok(), lr.is_ok()));
         // A failed unrestricted fit has its own warning; the tests it takes along need none each.
-        let missing = |test: &Result<Test, String>, said: bool| test.as_ref().err().filter(|_| self.any_tested && !said).cloned();
+        let missing =
+            |test: &Result<Test, String>, said: bool| test.as_ref().err().filter(|_| self.any_tested && !said).cloned();
         warnings.extend(warning::not_available(
             wanted,
             missing(&score, false).as_deref(),
@@ -192,7 +195,16 @@ impl Job<'_> {
                 block::of_failure(raw.clone(), reason, lines)
             }
         });
-        Outcome { information: kind, confidence: self.options.confidence, restricted, unrestricted, score, lr, wald, warnings }
+        Outcome {
+            information: kind,
+            confidence: self.options.confidence,
+            restricted,
+            unrestricted,
+            score,
+            lr,
+            wald,
+            warnings,
+        }
     }
 
     /// The unrestricted fit in the labelling nearest the restricted estimate; one that lies below the restricted fit has
@@ -200,7 +212,9 @@ impl Job<'_> {
     fn settle(&self, free: Fit, restricted: &Fit, scale: &Vector) -> Fit {
         let nearer = labelling::nearest(self.likelihood, self.held, &free, &restricted.theta, scale);
         let mut free = nearer.unwrap_or(free);
-        if free.certificate.verdict == Verdict::StrictMaximum && likelihood_ratio::statistic(restricted, &free).is_none() {
+        if free.certificate.verdict == Verdict::StrictMaximum
+            && likelihood_ratio::statistic(restricted, &free).is_none()
+        {
             free.certificate.verdict = Verdict::Stopped;
             free.certificate.reason = Some(format!(
                 "its log-likelihood {} is below that of the restricted fit, {}; make more starts",

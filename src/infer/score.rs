@@ -1,8 +1,8 @@
 //! The score (Lagrange-multiplier) test (Rao 1948; Silvey 1959; robust form Boos 1992). It needs the restricted fit only.
 
-use super::{Test, Warning};
 use super::point::Point;
 use super::release::Release;
+use super::{Test, Warning};
 use crate::likelihood::Information;
 use crate::math::Vector;
 
@@ -33,10 +33,7 @@ impl Routes {
                 multipliers: by_lambda.dot(&release.m_factor.solve(&by_lambda)),
             }
         } else {
-            Routes {
-                slope: (&release.c * &point.gradient).dot(&point.gradient),
-                multipliers: lambda.dot(&by_lambda),
-            }
+            Routes { slope: (&release.c * &point.gradient).dot(&point.gradient), multipliers: lambda.dot(&by_lambda) }
         }
     }
 

@@ -196,19 +196,10 @@ pub(super) fn from_writing(system: &System, information: Information, wald: bool
 }
 
 /// Tests that were wanted and cannot be given.
-pub(super) fn not_available(
-    wanted: Tests,
-    score: Option<&str>,
-    lr: Option<&str>,
-    wald: Option<&str>,
-) -> Vec<Warning> {
-    [
-        (wanted.score, "score test", score),
-        (wanted.lr, "likelihood-ratio test", lr),
-        (wanted.wald, "Wald test", wald),
-    ]
-    .into_iter()
-    .filter_map(|(wanted, name, reason)| reason.filter(|_| wanted).map(|reason| (name, reason)))
-    .map(|(name, reason)| Warning::new("test-not-available", format!("no {name}: {reason}")))
-    .collect()
+pub(super) fn not_available(wanted: Tests, score: Option<&str>, lr: Option<&str>, wald: Option<&str>) -> Vec<Warning> {
+    [(wanted.score, "score test", score), (wanted.lr, "likelihood-ratio test", lr), (wanted.wald, "Wald test", wald)]
+        .into_iter()
+        .filter_map(|(wanted, name, reason)| reason.filter(|_| wanted).map(|reason| (name, reason)))
+        .map(|(name, reason)| Warning::new("test-not-available", format!("no {name}: {reason}")))
+        .collect()
 }

@@ -60,9 +60,8 @@ fn observed_information_that_is_not_positive_definite_gives_no_statistic() {
         };
         Matrix::from_element(1, 1, y.iter().map(bend).sum::<f64>())
     };
-    let outer = move |t: &Vector| {
-        y.iter().map(|y| (2.0 * (y - t[0]) / (1.0 + (y - t[0]).powi(2))).powi(2)).sum::<f64>()
-    };
+    let outer =
+        move |t: &Vector| y.iter().map(|y| (2.0 * (y - t[0]) / (1.0 + (y - t[0]).powi(2))).powi(2)).sum::<f64>();
     let likelihood = FromFunctions::new(vec![parameter("m", Range::ALL)], vec![Vector::from_vec(vec![1.0])], l, g, h)
         .weight_total(4.0)
         .information(move |kind, t| match kind {

@@ -19,19 +19,27 @@ fn table(names: &[&str], counts: &[f64]) -> FromFunctions {
     let start = Vector::from_vec(vec![1.0 / n.len() as f64; n.len()]);
     let count = |f: fn(f64, f64) -> f64| {
         let n = n.clone();
-        move |p: &Vector| Vector::from_iterator(p.len(), n.iter().zip(p.iter()).map(|(&n, &p)| if n == 0.0 { 0.0 } else { f(n, p) }))
+        move |p: &Vector| {
+            Vector::from_iterator(p.len(), n.iter().zip(p.iter()).map(|(&n, &p)| if n == 0.0 { 0.0 } else { f(n, p) }))
+        }
     };
     let (value, slope, bend, square) =
         (count(|n, p| n * p.ln()), count(|n, p| n / p), count(|n, p| -n / (p * p)), count(|n, p| n / (p * p)));
     let parameters = names.iter().map(|name| parameter(name, Range::UNIT)).collect();
-    FromFunctions::new(parameters, vec![start], move |p| value(p).sum(), slope, move |p| Matrix::from_diagonal(&bend(p)))
-        .concave()
-        .weight_total(total)
-        .information(move |kind, p| match kind {
-            Information::Expected => Some(Matrix::from_diagonal(&p.map(|p| total / p))),
-            Information::Outer => Some(Matrix::from_diagonal(&square(p))),
-            _ => None,
-        })
+    FromFunctions::new(
+        parameters,
+        vec![start],
+        move |p| value(p).sum(),
+        slope,
+        move |p| Matrix::from_diagonal(&bend(p)),
+    )
+    .concave()
+    .weight_total(total)
+    .information(move |kind, p| match kind {
+        Information::Expected => Some(Matrix::from_diagonal(&p.map(|p| total / p))),
+        Information::Outer => Some(Matrix::from_diagonal(&square(p))),
+        _ => None,
+    })
 }
 
 /// A system of maintained and tested equations, named `m1`, ..., `t1`, ...

@@ -87,7 +87,7 @@ fn observed_outer_and_robust_follow_the_formulas() {
     close(observed.score.as_ref().unwrap().chi_square, 7.373390900298139);
 
     let outer = infer(&darwin, &tested, Some(Information::Outer));
-    let j = darwin.information(Information::Outer, &outcome_theta(&outer)).unwrap();
+    let j = LogLikelihood::information(&darwin, Information::Outer, &outcome_theta(&outer)).unwrap();
     let inverse = j.clone().try_inverse().unwrap();
     close(outer.score.as_ref().unwrap().chi_square, lambda * inverse[(0, 0)] * lambda);
 
@@ -146,7 +146,9 @@ fn working_coordinates_leave_no_trace() {
         move |p| b3.tr_mul(&normal(&DARWIN).evaluate(&(&b3 * p), crate::likelihood::Order::Hessian).hessian) * &b3,
     )
     .weight_total(15.0)
-    .information(move |kind, p| normal(&DARWIN).information(kind, &(&b4 * p)).map(|i| b4.tr_mul(&i) * &b4))
+    .information(move |kind, p| {
+        LogLikelihood::information(&normal(&DARWIN), kind, &(&b4 * p)).map(|i| b4.tr_mul(&i) * &b4)
+    })
     .coordinates(coordinates);
     let plain = normal(&DARWIN);
     for kind in Information::ALL {

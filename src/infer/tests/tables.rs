@@ -137,12 +137,15 @@ fn where_a_maintained_restriction_makes_the_density_only_expected_is_information
     let (value, slope, bend) =
         (weights(|n, a| 2.0 * n * a.abs().ln()), weights(|n, a| 2.0 * n / a), weights(|n, a| -2.0 * n / (a * a)));
     let names = ["x", "y", "z"].map(|name| parameter(name, Range::POSITIVE)).to_vec();
-    let likelihood =
-        FromFunctions::new(names, vec![Vector::from_vec(vec![0.5, 0.6, 0.6])], move |a| value(a).sum(), slope, move |a| {
-            Matrix::from_diagonal(&bend(a))
-        })
-        .weight_total(100.0)
-        .information(|kind, _| (kind == Information::Expected).then(|| Matrix::identity(3, 3) * 400.0));
+    let likelihood = FromFunctions::new(
+        names,
+        vec![Vector::from_vec(vec![0.5, 0.6, 0.6])],
+        move |a| value(a).sum(),
+        slope,
+        move |a| Matrix::from_diagonal(&bend(a)),
+    )
+    .weight_total(100.0)
+    .information(|kind, _| (kind == Information::Expected).then(|| Matrix::identity(3, 3) * 400.0));
     let restricted = system(&likelihood, &["x^2 + y^2 + z^2 = 1"], &["x = y"]);
     let outcome = infer(&likelihood, &restricted, None);
     // Equal cell probabilities are tested: Pearson again.
