@@ -20,7 +20,6 @@ pub(super) fn of_maximum(
         Ok(matrix) => (Some(matrix), None),
         Err(reason) => (None, Some(reason)),
     };
-    let names: Vec<&str> = point.likelihood.parameters().iter().map(|p| p.name.as_str()).collect();
     let values = quantities.values(&point.fit.theta);
     let gradients = quantities.gradient(&point.fit.theta);
     let quantity = |(i, name): (usize, &String)| -> Estimate {
@@ -28,7 +27,7 @@ pub(super) fn of_maximum(
         estimate(name, values[i], variance, quantile, None)
     };
     Block {
-        estimates: estimates(&names, point.fit, matrix.as_ref(), quantile),
+        estimates: estimates(point, matrix.as_ref(), quantile),
         quantities: quantities.names().iter().enumerate().map(quantity).collect(),
         covariance: matrix,
         multipliers,

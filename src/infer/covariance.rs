@@ -4,7 +4,7 @@ use super::Estimate;
 use super::point::{Point, stack, symmetric};
 use crate::likelihood::Information;
 use crate::math::{Matrix, Vector};
-use crate::solve::{Edge, Fit};
+use crate::solve::End;
 
 /// Covariance of theta under everything the fit imposes: Z (Z' I Z)^-1 Z', robust C J C. For the restricted fit
 /// (`tested` true) Z is free under all Jacobians and the observed form is -Hess of the full Lagrangian; for the
@@ -22,22 +22,16 @@ pub(super) fn covariance(point: &Point, kind: Information, tested: bool) -> Resu
 }
 
 /// One line a parameter: value, standard error, value minus and plus `quantile` standard errors, unclipped.
-pub(super) fn estimates(names: &[&str], fit: &Fit, covariance: Option<&Matrix>, quantile: f64) -> Vec<Estimate> {
-    let line = |(j, name): (usize, &&str)| {
-        let edge = fit.edges.iter().find(|e: &&Edge| e.parameter == j).map(|e| e.end);
-        estimate(name, fit.theta[j], covariance.map(|c| c[(j, j)]), quantile, edge)
-    };
-    names.iter().enumerate().map(line).collect()
+pub(super) fn estimates(point: &Point, covariance: Option<&Matrix>, quantile: f64) -> Vec<Estimate> {
+    let ends = point.ends();
+    let names = point.likelihood.parameters().iter().map(|p| p.name.as_str()).enumerate();
+    names
+        .map(|(j, name)| estimate(name, point.fit.theta[j], covariance.map(|c| c[(j, j)]), quantile, ends[j]))
+        .collect()
 }
 
 /// One estimate from its variance.
-pub(super) fn estimate(
-    name: &str,
-    value: f64,
-    variance: Option<f64>,
-    quantile: f64,
-    edge: Option<crate::solve::End>,
-) -> Estimate {
+pub(super) fn estimate(name: &str, value: f64, variance: Option<f64>, quantile: f64, edge: Option<End>) -> Estimate {
     let se = variance.map(|v| v.max(0.0).sqrt()).filter(|se| se.is_finite());
     Estimate {
         name: name.to_string(),

@@ -1,6 +1,6 @@
 //! The four information matrices at a point, in working coordinates, as the tests and covariances use them.
 
-use super::point::Point;
+use super::point::{Point, pinned};
 use crate::likelihood::Information;
 use crate::math::{Matrix, Vector};
 
@@ -13,8 +13,14 @@ pub(super) struct Sandwich {
 }
 
 /// The information of this kind at the point. `multipliers` (one a restriction of the whole system) say whose curvature
-/// belongs to minus the Hessian: the maintained ones' for tests, all for the restricted covariance.
-pub(super) fn sandwich(point: &Point, kind: Information, multipliers: &Vector) -> Result<Sandwich, String> {
+/// belongs to minus the Hessian: the maintained ones' for tests, all for the restricted covariance. `rows` are what is
+/// imposed where the matrix will be used.
+pub(super) fn sandwich(
+    point: &Point,
+    kind: Information,
+    multipliers: &Vector,
+    rows: &Matrix,
+) -> Result<Sandwich, String> {
     let bread = match kind {
         Information::Expected | Information::Outer => point
             .likelihood
@@ -34,17 +40,20 @@ pub(super) fn sandwich(point: &Point, kind: Information, multipliers: &Vector) -
         ),
         _ => None,
     };
-    let bread = clean(point, bread, 1.0, kind)?;
-    let filling = filling.map(|j| clean(point, j, 0.0, kind)).transpose()?;
+    let bread = clean(point, bread, 1.0, kind, rows)?;
+    let filling = filling.map(|j| clean(point, j, 0.0, kind, rows)).transpose()?;
     Ok(Sandwich { bread, filling })
 }
 
-/// Takes a parameter on an active edge out of a matrix where its entries are not finite: the edge is imposed, so no
-/// direction of the tangent space meets them. Anywhere else an entry that is not finite leaves no statistic.
-fn clean(point: &Point, mut matrix: Matrix, diagonal: f64, kind: Information) -> Result<Matrix, String> {
+/// Takes a parameter that `rows` pin (an active edge, say) out of a matrix where its entries are not finite: no direction
+/// left free meets them. Anywhere else an entry that is not finite leaves no statistic.
+fn clean(point: &Point, mut matrix: Matrix, diagonal: f64, kind: Information, rows: &Matrix) -> Result<Matrix, String> {
     let n = matrix.nrows();
-    for edge in &point.fit.edges {
-        let j = edge.parameter;
+    if matrix.iter().all(|x| x.is_finite()) {
+        return Ok(matrix);
+    }
+    let pinned = pinned(rows, n);
+    for j in (0..n).filter(|&j| pinned[j]) {
         if (0..n).any(|i| !matrix[(i, j)].is_finite() || !matrix[(j, i)].is_finite()) {
             matrix.row_mut(j).fill(0.0);
             matrix.column_mut(j).fill(0.0);

@@ -1,6 +1,7 @@
 //! The likelihood-ratio test.
 
 use super::Test;
+use super::point::Point;
 use crate::solve::Fit;
 
 /// An unrestricted fit that lies further below the restricted one than this, relative, is a failed one (contract, section 2).
@@ -14,7 +15,7 @@ pub(super) fn statistic(restricted: &Fit, unrestricted: &Fit) -> Option<f64> {
 }
 
 /// The test. On an edge it stands if it is finite and the tested point is interior (Self and Liang 1987).
-pub(super) fn test(restricted: &Fit, unrestricted: &Fit, df: usize, tested_on_edge: bool) -> Result<Test, String> {
+pub(super) fn test(restricted: &Fit, unrestricted: &Point, df: usize, tested_on_edge: bool) -> Result<Test, String> {
     if tested_on_edge && !unrestricted.edges.is_empty() {
         return Err(
             "both the tested point and the unrestricted estimate are on an edge of the parameters' ranges, where \
@@ -22,7 +23,7 @@ pub(super) fn test(restricted: &Fit, unrestricted: &Fit, df: usize, tested_on_ed
                 .to_string(),
         );
     }
-    match statistic(restricted, unrestricted) {
+    match statistic(restricted, unrestricted.fit) {
         Some(ratio) if ratio.is_finite() => Ok(Test::new(ratio, df)),
         Some(_) => Err("the likelihood ratio is not finite".to_string()),
         None => Err("the unrestricted fit is worse than the restricted one".to_string()),

@@ -1,11 +1,11 @@
 //! A fit with what every formula needs there: derivatives, Jacobians, scale, tangent spaces.
 
 use super::information::{Sandwich, sandwich};
-use crate::likelihood::{Information, LogLikelihood, Order};
-use crate::math::linear::{null_space, symmetric_eigen};
+use crate::likelihood::{Information, LogLikelihood, Order, Parameter};
+use crate::math::linear::{dependent_rows, null_space, symmetric_eigen};
 use crate::math::{Matrix, Vector};
 use crate::restriction::{Role, System};
-use crate::solve::Fit;
+use crate::solve::{Edge, End, Fit};
 
 /// Eigenvalues of a scaled, projected information below this part of the largest are rounding, not information.
 const DEFINITE: f64 = 1e-12;
@@ -23,6 +23,8 @@ pub(super) struct Point<'a> {
     pub system: &'a System,
     /// The fit.
     pub fit: &'a Fit,
+    /// Active edges that no restriction imposed by the fit already implies.
+    pub edges: Vec<Edge>,
     /// Gradient of l.
     pub gradient: Vector,
     /// Hessian of l.
@@ -38,25 +40,40 @@ pub(super) struct Point<'a> {
 }
 
 impl<'a> Point<'a> {
-    /// `multipliers` belong to the whole system; those of tested restrictions are not looked at.
-    pub fn new(likelihood: &'a dyn LogLikelihood, system: &'a System, fit: &'a Fit, multipliers: &Vector) -> Self {
-        let n = fit.phi.len();
+    /// `imposes_tested` says whether the fit imposes the tested restrictions. `multipliers` belong to the whole system;
+    /// those of tested restrictions are not looked at.
+    pub fn new(
+        likelihood: &'a dyn LogLikelihood,
+        system: &'a System,
+        fit: &'a Fit,
+        imposes_tested: bool,
+        multipliers: &Vector,
+    ) -> Self {
         let evaluation = likelihood.evaluate(&fit.phi, Order::Hessian);
         let jacobian = likelihood.coordinates().jacobian(&system.jacobian(&fit.theta));
         let is_tested: Vec<bool> = system.items().iter().map(|r| r.role == Role::Tested).collect();
         let tested_at: Vec<usize> = (0..is_tested.len()).filter(|&i| is_tested[i]).collect();
         let held_at: Vec<usize> = (0..is_tested.len()).filter(|&i| !is_tested[i]).collect();
-        let mut edges = Matrix::zeros(fit.edges.len(), n);
-        for (row, edge) in fit.edges.iter().enumerate() {
-            edges[(row, edge.parameter)] = 1.0;
-        }
-        let edges = likelihood.coordinates().jacobian(&edges);
+        let tested = jacobian.select_rows(&tested_at);
+        let maintained = jacobian.select_rows(&held_at);
+        // An edge that the restrictions alone imply adds nothing; the whole slope there belongs to their multipliers.
+        let imposed = if imposes_tested { jacobian } else { maintained.clone() };
+        let all = edge_rows(likelihood, &fit.edges);
+        let first = imposed.nrows();
+        let implied = dependent_rows(&stack(&imposed, &all), DEPENDENT);
+        let edges: Vec<Edge> = fit
+            .edges
+            .iter()
+            .enumerate()
+            .filter(|(k, _)| !implied.contains(&(first + k)))
+            .map(|(_, e)| e.clone())
+            .collect();
+        let held = stack(&maintained, &edge_rows(likelihood, &edges));
         let mut gradient = evaluation.gradient;
-        for edge in &fit.edges {
-            // An imposed edge takes no part in any direction; an infinite slope there must not become 0 times infinity.
-            if !gradient[edge.parameter].is_finite() {
-                gradient[edge.parameter] = 0.0;
-            }
+        if gradient.iter().any(|x| !x.is_finite()) {
+            // A parameter that cannot move takes part in no direction; its slope must not become 0 times infinity.
+            let pinned = pinned(&held, gradient.len());
+            gradient.iter_mut().zip(pinned).filter(|(x, pinned)| *pinned && !x.is_finite()).for_each(|(x, _)| *x = 0.0);
         }
         let mut held_multipliers = multipliers.clone();
         tested_at.iter().for_each(|&i| held_multipliers[i] = 0.0);
@@ -64,10 +81,11 @@ impl<'a> Point<'a> {
             likelihood,
             system,
             fit,
+            edges,
             gradient,
             hessian: evaluation.hessian,
-            held: stack(&jacobian.select_rows(&held_at), &edges),
-            tested: jacobian.select_rows(&tested_at),
+            held,
+            tested,
             tested_at,
             held_multipliers,
         }
@@ -115,7 +133,7 @@ impl<'a> Point<'a> {
         kind: Information,
         multipliers: &Vector,
     ) -> Result<(Matrix, Sandwich), String> {
-        let parts = sandwich(self, kind, multipliers)?;
+        let parts = sandwich(self, kind, multipliers, rows)?;
         match projected_inverse(rows, &parts.bread) {
             Ok(c) => Ok((c, parts)),
             Err(ratio) => {
@@ -123,7 +141,8 @@ impl<'a> Point<'a> {
                     .into_iter()
                     .filter(|&other| other != kind && !(kind == Information::Robust && other == Information::Observed))
                     .filter(|&other| {
-                        sandwich(self, other, multipliers).is_ok_and(|s| projected_inverse(rows, &s.bread).is_ok())
+                        sandwich(self, other, multipliers, rows)
+                            .is_ok_and(|s| projected_inverse(rows, &s.bread).is_ok())
                     })
                     .map(Information::text)
                     .collect();
@@ -141,26 +160,43 @@ impl<'a> Point<'a> {
         }
     }
 
-    /// Names of parameters at a closed end of their range that are not held by an active edge: the tested restrictions put
-    /// them there.
-    pub fn put_on_edge(&self) -> Vec<&str> {
-        let free = |j: usize| self.fit.edges.iter().all(|e| e.parameter != j);
-        let on = |j: usize| {
-            let (x, r) = (self.fit.theta[j], self.likelihood.parameters()[j].range);
-            // A restriction is met to 1e-9 (contract, section 5), so its value may miss the end by that.
-            (r.low_closed && (x - r.low).abs() <= 1e-9 * (1.0 + r.low.abs()))
-                || (r.high_closed && (x - r.high).abs() <= 1e-9 * (1.0 + r.high.abs()))
+    /// Which end of its range each parameter stands on.
+    pub fn ends(&self) -> Vec<Option<End>> {
+        // A restriction is met to 1e-9 (contract, section 5), so its value may miss the end by that.
+        let near = |x: f64, end: f64| (x - end).abs() <= 1e-9 * (1.0 + end.abs());
+        let end = |(p, &x): (&Parameter, &f64)| match p.range {
+            r if r.low_closed && near(x, r.low) => Some(End::Lower),
+            r if r.high_closed && near(x, r.high) => Some(End::Upper),
+            _ => None,
         };
-        (0..self.fit.theta.len())
-            .filter(|&j| free(j) && on(j))
-            .map(|j| self.likelihood.parameters()[j].name.as_str())
-            .collect()
+        self.likelihood.parameters().iter().zip(self.fit.theta.iter()).map(end).collect()
+    }
+
+    /// Names of parameters that the tested restrictions put on an end of their range.
+    pub fn put_on_edge(&self) -> Vec<&str> {
+        let pinned = pinned(&self.held, self.fit.theta.len());
+        let names = self.likelihood.parameters().iter().map(|p| p.name.as_str());
+        let all = names.zip(self.ends()).zip(pinned);
+        all.filter(|((_, end), pinned)| end.is_some() && !pinned).map(|((name, _), _)| name).collect()
     }
 
     /// Names of the parameters on an active edge.
     pub fn edge_names(&self) -> Vec<&str> {
-        self.fit.edges.iter().map(|e| self.likelihood.parameters()[e.parameter].name.as_str()).collect()
+        self.edges.iter().map(|e| self.likelihood.parameters()[e.parameter].name.as_str()).collect()
     }
+}
+
+/// Rows e_j of these edges, by working coordinates.
+fn edge_rows(likelihood: &dyn LogLikelihood, edges: &[Edge]) -> Matrix {
+    let mut rows = Matrix::zeros(edges.len(), likelihood.parameters().len());
+    edges.iter().enumerate().for_each(|(k, edge)| rows[(k, edge.parameter)] = 1.0);
+    likelihood.coordinates().jacobian(&rows)
+}
+
+/// Which of `n` coordinates cannot move under `rows`.
+pub(super) fn pinned(rows: &Matrix, n: usize) -> Vec<bool> {
+    let z = free(rows, &Vector::from_element(n, 1.0));
+    (0..n).map(|j| z.row(j).norm() <= DEPENDENT).collect()
 }
 
 /// One matrix above the other.

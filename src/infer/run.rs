@@ -118,8 +118,8 @@ impl Job<'_> {
     fn infer(&self, fit: Fit, unrestricted: Result<Fit, String>) -> Outcome {
         let (likelihood, kind, wanted) = (self.likelihood, self.kind, self.options.tests);
         let mut warnings = self.options.warnings.clone();
-        let point = Point::new(likelihood, self.system, &fit, &fit.multipliers);
-        let scale = sandwich(&point, kind, &point.held_multipliers)
+        let point = Point::new(likelihood, self.system, &fit, true, &fit.multipliers);
+        let scale = sandwich(&point, kind, &point.held_multipliers, &point.held)
             .map_or_else(|_| Vector::from_element(fit.phi.len(), 1.0), |s| Point::scale(&s.bread));
         let kept = point.independent(&scale);
         let df = kept.len();
@@ -156,12 +156,12 @@ impl Job<'_> {
         }
         let whole =
             usable.as_ref().map_or_else(|_| Vector::zeros(self.system.items().len()), |f| self.spread(&f.multipliers));
-        let free = usable.as_ref().map(|f| Point::new(likelihood, self.system, f, &whole)).map_err(Clone::clone);
+        let free = usable.as_ref().map(|f| Point::new(likelihood, self.system, f, false, &whole)).map_err(Clone::clone);
         let sides = free.as_ref().map(|f| self.system.sides(&f.fit.theta)).map_err(Clone::clone);
 
         let lr = asked(wanted.lr).and_then(|()| {
             let free = free.as_ref().map_err(Clone::clone)?;
-            likelihood_ratio::test(&fit, free.fit, df, !on_edge.is_empty())
+            likelihood_ratio::test(&fit, free, df, !on_edge.is_empty())
         });
         let wald = asked(wanted.wald).and_then(|()| {
             let free = free.as_ref().map_err(Clone::clone)?;

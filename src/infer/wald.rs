@@ -9,7 +9,7 @@ use crate::restriction::Sides;
 
 /// h' [H C H']^-1 h, robust h' [H C J C H']^-1 h, with h = left - right of the tested restrictions kept.
 pub(super) fn test(point: &Point, kind: Information, kept: &[usize], sides: &[Sides]) -> Result<Test, String> {
-    if !point.fit.edges.is_empty() {
+    if !point.edges.is_empty() {
         return Err(format!(
             "the unrestricted estimate is on an edge of a range ({}), where the Wald statistic has no chi-square law",
             point.edge_names().join(", ")

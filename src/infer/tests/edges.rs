@@ -41,7 +41,12 @@ fn infinite_information_of_a_tested_edge_gives_no_statistic() {
     let counts = table(NAMES, &[0.0, 12.0, 20.0, 30.0]);
     let outcome = infer(&counts, &system(&counts, SUM, &["a = 0"]), None);
     assert!(codes(&outcome).contains(&"tested-on-edge"), "{:?}", outcome.warnings);
-    assert!(outcome.score.is_err());
+    assert!(outcome.score.as_ref().unwrap_err().contains("not finite at 0"));
+    // The whole slope belongs to the hypothesis: without it the sum's multiplier is the number of rows.
+    close(outcome.restricted.multipliers[1].value.unwrap(), -62.0);
+    assert_eq!(outcome.restricted.estimates[0].edge, Some(crate::solve::End::Lower));
+    // Pinned by the hypothesis, it takes its infinite information out of the restricted covariance: binomial shares.
+    close(se(&outcome)[1], ((12.0 / 62.0) * (50.0 / 62.0) / 62.0f64).sqrt());
     assert!(outcome.lr.is_err(), "both the tested point and the unrestricted estimate are on the edge");
 }
 
