@@ -6,19 +6,55 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 
 use crate::study::{Given, Overlay};
 
+// Long texts are broken by hand: clap would need one more crate to do it.
+
+const ABOUT: &str = "\
+Guyline maximises a likelihood under equality restrictions and answers three questions: what the
+estimates are with all restrictions imposed, how hard the data pull at each restriction and in
+which direction, and whether the data accept them. Every answer carries a certificate that says
+why it may be believed.";
+
+const STATUSES: &str = "\
+Exit status:
+  0  done
+  1  the gate closed
+  2  the command line or the study is wrong
+  3  the data are wrong
+  4  no trustworthy restricted maximum, or a gate without a p
+  5  a file could not be read or written";
+
+const FIT: &str = "\
+Fits the study's model to its data under all restrictions, maintained and tested. Prints the
+estimates, what each restriction pulls, whether the data accept the restrictions (score,
+likelihood-ratio and Wald test), and the certificate. A study can be a file, options alone, or a
+file with options over it: options go before --with, --with before the file.";
+
+const FIT_EXAMPLES: &str = "\
+Examples:
+  guyline fit flaws.toml
+  guyline fit flaws.toml --drop same_slope --tested 'flat: rate.soak = 0'
+  guyline fit --data flaws.csv --family poisson --response flaws --exposure area \\
+      --per kiln --tested 'north.rate = 2 * south.rate' --gate 0.01";
+
+const CHECK: &str = "\
+Reads the study and its data and says in words what would be fitted: the rows, each column and
+its use, each parameter with its meaning, range and starting value, each restriction written out.
+Looks for the usual mistakes. Fits nothing.";
+
+const COMPLETIONS: &str = "\
+Writes a script to standard output that completes guyline's commands and options in a shell. Put
+it where the shell looks for such scripts.";
+
 /// The whole command line.
 #[derive(Debug, Parser)]
 #[command(
     name = "guyline",
+    bin_name = "guyline",
     version,
     about = "Maximum likelihood under equality restrictions: estimates, multipliers, tests, and why to believe them",
-    long_about = "Guyline maximises a likelihood under equality restrictions and answers three questions: what the estimates are \
-with all restrictions imposed, how hard the data pull at each restriction and in which direction, and whether the data accept \
-them. Every answer carries a certificate that says why it may be believed.",
-    after_help = "Exit status: 0 done; 1 the gate closed; 2 the command line or the study is wrong; 3 the data are wrong; 4 no \
-trustworthy maximum; 5 a file could not be read or written.",
-    disable_help_subcommand = true,
-    max_term_width = 100
+    long_about = ABOUT,
+    after_help = STATUSES,
+    disable_help_subcommand = true
 )]
 pub struct Arguments {
     /// What to do.
@@ -30,26 +66,15 @@ pub struct Arguments {
 #[derive(Debug, Subcommand)]
 pub enum Command {
     /// Fit under the restrictions: estimates, multipliers, tests, certificate
-    #[command(
-        long_about = "Fits the study's model to its data under all restrictions, maintained and tested. Prints the estimates, \
-what each restriction pulls, whether the data accept the restrictions (score, likelihood-ratio and Wald test), and the \
-certificate. A study can be a file, options alone, or a file with options over it.",
-        after_help = "Examples:\n  guyline fit flaws.toml\n  guyline fit flaws.toml --drop same_slope --tested 'flat: rate.soak = 0'\n  \
-guyline fit --data flaws.csv --family poisson --response flaws --exposure area --per kiln \\\n      --tested 'north.rate = 2 * south.rate' \
---gate 0.01"
-    )]
+    #[command(long_about = FIT, after_help = FIT_EXAMPLES)]
     Fit(Fit),
     /// Say in words what a study would fit, and look for the usual mistakes; fits nothing
-    #[command(
-        long_about = "Reads the study and its data and says in words what would be fitted: the rows, each column and its use, each \
-parameter with its meaning, range and starting value, each restriction written out. Looks for the usual mistakes. Fits nothing."
-    )]
+    #[command(long_about = CHECK)]
     Check(Check),
     /// List the families of likelihoods, or describe one
     Families(Families),
     /// Write completions for a shell to standard output
-    #[command(long_about = "Writes a script to standard output that completes guyline's commands and options in a shell. \
-Put it where the shell looks for such scripts.")]
+    #[command(long_about = COMPLETIONS)]
     Completions {
         /// The shell
         shell: clap_complete::Shell,
@@ -224,9 +249,7 @@ impl Fit {
 }
 
 fn given(keys: &[(&'static str, &'static str, &Option<String>)]) -> Vec<Given> {
-    keys.iter()
-        .filter_map(|(option, key, value)| Some(Given { option, key, value: Option::clone(value)? }))
-        .collect()
+    keys.iter().filter_map(|(option, key, value)| Some(Given { option, key, value: Option::clone(value)? })).collect()
 }
 
 #[cfg(test)]

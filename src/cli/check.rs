@@ -98,7 +98,11 @@ fn span(values: &[f64]) -> String {
     let (low, high) = (finite().fold(f64::INFINITY, f64::min), finite().fold(f64::NEG_INFINITY, f64::max));
     let open = values.len() - finite().count();
     let open = if open > 0 { format!(", {} open", count(open, "end")) } else { String::new() };
-    if low > high { format!("; no finite number{open}") } else { format!("; from {} to {}{open}", short(low, 6), short(high, 6)) }
+    if low > high {
+        format!("; no finite number{open}")
+    } else {
+        format!("; from {} to {}{open}", short(low, 6), short(high, 6))
+    }
 }
 
 fn parameters(job: &Job, start: &Vector) -> String {

@@ -36,7 +36,10 @@ pub fn uses(study: &Study, column: &str) -> Vec<String> {
             Form::Curve(text) => add(names(text, column), format!("in the curve of {}", setting.name)),
             Form::Terms(terms) => {
                 add(terms.terms.iter().flatten().any(|c| c == column), format!("a term of {}", setting.name));
-                add(terms.offset.as_deref().is_some_and(|o| names(o, column)), format!("in the offset of {}", setting.name));
+                add(
+                    terms.offset.as_deref().is_some_and(|o| names(o, column)),
+                    format!("in the offset of {}", setting.name),
+                );
             }
         }
     }

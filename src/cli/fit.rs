@@ -9,6 +9,7 @@ use super::sentence::sentence;
 use super::status::{Status, Stop};
 use crate::infer::{self, Outcome};
 use crate::likelihood::LogLikelihood;
+use crate::report::number::exact;
 use crate::report::{DataFacts, Document, ModelFacts, Named, csv, json, text};
 use crate::restriction::Role;
 use crate::solve::{Search, Step, Verdict};
@@ -122,10 +123,8 @@ fn document(job: &Job, outcome: Outcome) -> Document {
 fn trace(steps: &[Step]) -> String {
     let mut out = String::from("iteration,log_likelihood,feasibility,stationarity,length,shift\n");
     for s in steps {
-        out += &format!(
-            "{},{},{},{},{},{}\n",
-            s.iteration, s.log_likelihood, s.feasibility, s.stationarity, s.length, s.shift
-        );
+        let figures = [s.log_likelihood, s.feasibility, s.stationarity, s.length, s.shift].map(exact);
+        out += &format!("{},{}\n", s.iteration, figures.join(","));
     }
     out
 }

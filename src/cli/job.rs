@@ -7,7 +7,7 @@ use crate::data::{self, Counts, DataError, Table};
 use crate::expr::{ExprError, picture};
 use crate::likelihood::{self, LikelihoodError, LogLikelihood, Sample};
 use crate::restriction::{Draft, Quantities, RestrictionError, Role, System};
-use crate::study::{Places, Shown, Study, wanted};
+use crate::study::{Places, Shown, Study, names};
 
 /// A study met with its data.
 pub struct Job {
@@ -31,26 +31,34 @@ impl Job {
     /// Reads the data and prepares the likelihood and its restrictions. What can be said of the study without its data is
     /// said first.
     pub fn prepare(study: Study) -> Result<Job, Stop> {
-        wanted::grammar(&study).map_err(Stop::study)?;
+        names::grammar(&study).map_err(Stop::study)?;
         let places = &study.places;
         let started = Instant::now();
         let mut request = study.data.request.clone();
-        (request.wanted, request.pairs) = wanted::wanted(&study);
+        (request.wanted, request.pairs) = likelihood::wanted(&study.model).map_err(|e| of_likelihood(places, &e))?;
         let table = match &study.data.source {
             Some(source) => {
                 // Standard input can be read once only.
                 let source = source.load()?;
-                wanted::stray_names(&study, &data::names(&source, &request)?).map_err(Stop::study)?;
+                names::names(&study, &data::names(&source, &request)?).map_err(Stop::study)?;
                 data::read(&source, &request).map_err(|e| of_data(places, e))?
             }
             None => {
-                wanted::stray_names(&study, &[]).map_err(Stop::study)?;
+                names::names(&study, &[]).map_err(Stop::study)?;
                 nothing()
             }
         };
         let reading = started.elapsed();
         let started = Instant::now();
         let sample = likelihood::prepare(&study.model, &table).map_err(|e| of_likelihood(places, &e))?;
+        if sample.parameters().is_empty() {
+            return Err(Stop::study(places.show(
+                "model",
+                None,
+                "every parameter is known, so there is nothing to fit",
+                Some("take a known value out; to test it, write it as a restriction under [tested]"),
+            )));
+        }
         let family = sample.family_restrictions().iter().map(|text| Draft {
             name: None,
             role: Role::Family,
@@ -59,8 +67,7 @@ impl Job {
         });
         let drafts: Vec<Draft> = family.chain(study.restrictions.iter().cloned()).collect();
         let names: Vec<String> = sample.parameters().iter().map(|p| p.name.clone()).collect();
-        let mut system =
-            System::compile(&drafts, &names, sample.known()).map_err(|e| of_restriction(&study, &e))?;
+        let mut system = System::compile(&drafts, &names, sample.known()).map_err(|e| of_restriction(&study, &e))?;
         for name in &study.drop {
             system = system.drop(name).map_err(|e| Stop::study(format!("command line, --drop: {e}")))?;
         }
@@ -122,7 +129,9 @@ fn of_restriction(study: &Study, error: &RestrictionError) -> Stop {
         RestrictionError::Contradiction { place, name, equation, gap } => Stop::study(places.show(
             place,
             None,
-            &format!("{name} contradicts itself: in {equation} left minus right is {gap} whatever the free parameters are"),
+            &format!(
+                "{name} contradicts itself: in {equation} left minus right is {gap} whatever the free parameters are"
+            ),
             Some("correct it, or leave it out"),
         )),
         RestrictionError::Jumps { place, name, equation } => Stop::study(places.show(

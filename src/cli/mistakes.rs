@@ -43,7 +43,10 @@ fn of_term(column: &str, values: &[f64]) -> Option<String> {
     different.dedup();
     let largest = values.iter().fold(0.0f64, |m, v| m.max(v.abs()));
     if different.len() == 1 {
-        return Some(format!("{column} is {} in every row, so no coefficient of it can be told from the intercept", different[0]));
+        return Some(format!(
+            "{column} is {} in every row, so no coefficient of it can be told from the intercept",
+            different[0]
+        ));
     }
     let whole = different.iter().all(|v| v.fract() == 0.0);
     if whole && (3..=CODES).contains(&different.len()) && values.len() >= ROWS {
@@ -70,7 +73,11 @@ fn of_levels(table: &Table, column: &str) -> Option<String> {
         return Some(format!("no row has {column} {}: its coefficient cannot be told", super::sentence::list(&unseen)));
     }
     (levels.len() > CODES && 2 * levels.len() > codes.len()).then(|| {
-        format!("{column} has {} different labels in {} rows: is it a number with some text in it?", levels.len(), codes.len())
+        format!(
+            "{column} has {} different labels in {} rows: is it a number with some text in it?",
+            levels.len(),
+            codes.len()
+        )
     })
 }
 
@@ -82,7 +89,8 @@ fn of_weight(column: &str, table: &Table) -> Option<String> {
 
 /// Mistakes that the restrictions show at the starting point.
 pub fn of_restrictions(system: &System, likelihood: &dyn LogLikelihood, start: &Vector) -> Vec<String> {
-    let mut out: Vec<String> = system.left_out().iter().map(|l| format!("{} holds whatever the parameters are", l.name)).collect();
+    let mut out: Vec<String> =
+        system.left_out().iter().map(|l| format!("{} holds whatever the parameters are", l.name)).collect();
     let items = system.items();
     let jacobian = system.jacobian(start);
     if jacobian.iter().all(|v| v.is_finite()) {
@@ -101,9 +109,13 @@ pub fn of_restrictions(system: &System, likelihood: &dyn LogLikelihood, start: &
             } else if implied.contains(&i) {
                 out.push(format!("{name} says nothing that the restrictions before it do not say: leave it out"));
             } else if linear {
-                out.push(format!("{name} contradicts the restrictions before it: no values of the parameters meet them all"));
+                out.push(format!(
+                    "{name} contradicts the restrictions before it: no values of the parameters meet them all"
+                ));
             } else {
-                out.push(format!("at the start {name} has the slopes of those before it: it may repeat or contradict them"));
+                out.push(format!(
+                    "at the start {name} has the slopes of those before it: it may repeat or contradict them"
+                ));
             }
         }
     } else {
@@ -133,11 +145,13 @@ mod tests {
     }
 
     fn table(columns: &[(&str, Vec<f64>)]) -> Table {
-        let column = |(name, v): &(&str, Vec<f64>)| Column { name: name.to_string(), values: Values::Number(v.clone()) };
+        let column =
+            |(name, v): &(&str, Vec<f64>)| Column { name: name.to_string(), values: Values::Number(v.clone()) };
         Table { rows: columns[0].1.len(), columns: columns.iter().map(column).collect(), ..Table::default() }
     }
 
-    const MEAN: &str = "[data]\nfile='a'\nweight='w'\n[model]\nfamily='normal'\nresponse='y'\n[model.mean]\nterms=['x']\n";
+    const MEAN: &str =
+        "[data]\nfile='a'\nweight='w'\n[model]\nfamily='normal'\nresponse='y'\n[model.mean]\nterms=['x']\n";
 
     #[test]
     fn codes_units_constants_and_indices_are_found() {

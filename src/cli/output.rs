@@ -53,7 +53,10 @@ pub fn writable(path: &Path) -> Result<(), Stop> {
         return Ok(());
     }
     let fail = |e: io::Error| {
-        Stop::file(format!("{} could not be written: {e}\n    the folder must exist and take new files", path.display()))
+        Stop::file(format!(
+            "{} could not be written: {e}\n    the folder must exist and take new files",
+            path.display()
+        ))
     };
     if path.is_dir() {
         return Err(fail(io::Error::new(ErrorKind::IsADirectory, "it is a folder")));

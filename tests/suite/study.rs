@@ -2,7 +2,8 @@
 
 use crate::harness::{Folder, run_in};
 
-const ROWS: &str = "y,x,kiln\n1.2,0.5,north\n2.3,1.5,south\n2.9,2.5,north\n4.1,3.5,south\n5.2,4.5,north\n6.8,5.5,south\n";
+const ROWS: &str =
+    "y,x,kiln\n1.2,0.5,north\n2.3,1.5,south\n2.9,2.5,north\n4.1,3.5,south\n5.2,4.5,north\n6.8,5.5,south\n";
 const STUDY: &str = "[data]\nfile = \"d.csv\"\n[model]\nfamily = \"normal\"\nresponse = \"y\"\n[model.mean]\nterms = [\"x\"]\n\
                      [tested]\none = \"mean.x = 1\"\n[options]\nconfidence = 0.9\nformat = \"json\"\n";
 
@@ -18,8 +19,23 @@ fn a_study_by_options_alone_gives_the_same_answer() {
     let folder = folder();
     let file = folder.run(&["fit", "s.toml", "--with", "title=\"\"", "--with", "title=t"]);
     let options = [
-        "fit", "--data", "d.csv", "--family", "normal", "--response", "y", "--with", "model.mean.terms=[\"x\"]", "--with",
-        "title=t", "--tested", "one: mean.x = 1", "--confidence", "0.9", "--format", "json",
+        "fit",
+        "--data",
+        "d.csv",
+        "--family",
+        "normal",
+        "--response",
+        "y",
+        "--with",
+        "model.mean.terms=[\"x\"]",
+        "--with",
+        "title=t",
+        "--tested",
+        "one: mean.x = 1",
+        "--confidence",
+        "0.9",
+        "--format",
+        "json",
     ];
     let alone = folder.run(&options);
     assert_eq!(file.status, 0, "{}", file.err);
@@ -56,7 +72,8 @@ fn paths_in_a_study_start_at_the_study() {
     let answer = run_in(&there, &["fit", "../s.toml"], "");
     assert_eq!(answer.status, 0, "{}", answer.err);
     folder.write("sub/e.csv", ROWS.replace("6.8", "7.8"));
-    let other = run_in(&there, &["fit", "../s.toml", "--data", "e.csv", "--output", "out.json", "--trace", "t.csv"], "");
+    let other =
+        run_in(&there, &["fit", "../s.toml", "--data", "e.csv", "--output", "out.json", "--trace", "t.csv"], "");
     assert_eq!((other.status, other.out.as_str()), (0, ""), "{}", other.err);
     let written = std::fs::read_to_string(there.join("out.json")).unwrap();
     assert!(written.contains("\"e.csv\"") && written != answer.out);
@@ -70,7 +87,8 @@ fn the_gate_closes_below_its_level() {
     let folder = folder();
     let p = folder.run(&["fit", "s.toml"]).fit().number("/tests/score/p").unwrap();
     assert!(p > 1e-6 && p < 0.999, "{p}");
-    let gate = |alpha: f64, more: &[&str]| folder.run(&[&["fit", "s.toml", "--gate", &alpha.to_string()], more].concat());
+    let gate =
+        |alpha: f64, more: &[&str]| folder.run(&[&["fit", "s.toml", "--gate", &alpha.to_string()], more].concat());
     assert_eq!(gate(p * 0.99, &[]).status, 0);
     let closed = gate((p * 1.01).min(0.9999), &[]);
     assert_eq!(closed.status, 1);
@@ -97,10 +115,27 @@ fn check_says_what_would_be_fitted_and_what_looks_wrong() {
     let rows: String = (0..24).map(|i| format!("{},{},{}\n", 1.0 + 0.1 * f64::from(i % 7), i % 3 + 1, i + 1)).collect();
     folder.write("d.csv", format!("y,x,n\n{rows}"));
     let answer = folder.run(&[
-        "check", "s.toml", "--weight", "n", "--tested", "two: 2 * mean.x = 2", "--maintained", "no: mean.x = 3",
+        "check",
+        "s.toml",
+        "--weight",
+        "n",
+        "--tested",
+        "two: 2 * mean.x = 2",
+        "--maintained",
+        "no: mean.x = 3",
     ]);
     assert_eq!(answer.status, 0, "{}", answer.err);
-    for part in ["normal", "mean.x", "mean.intercept", "sd", "24 rows", "put to the test", "[data.category]", "row numbers", "contradicts"] {
+    for part in [
+        "normal",
+        "mean.x",
+        "mean.intercept",
+        "sd",
+        "24 rows",
+        "put to the test",
+        "[data.category]",
+        "row numbers",
+        "contradicts",
+    ] {
         assert!(answer.out.contains(part), "lacks {part}:\n{}", answer.out);
     }
     assert!(answer.err.is_empty(), "{}", answer.err);
@@ -115,7 +150,11 @@ fn families_are_listed_and_described() {
     for name in ["normal", "poisson", "binomial", "exponential", "categorical", "mixture", "custom"] {
         assert!(names.contains(&name), "{name}");
         let one = folder.run(&["families", name]);
-        assert!(one.status == 0 && one.out.contains("log density") && one.out.contains("source"), "{name}: {}", one.out);
+        assert!(
+            one.status == 0 && one.out.contains("log density") && one.out.contains("source"),
+            "{name}: {}",
+            one.out
+        );
     }
     for f in list.as_array().unwrap() {
         for key in ["name", "response", "parameters", "formula", "information", "source"] {
