@@ -5,6 +5,7 @@ mod component;
 pub mod data;
 pub mod fault;
 mod model;
+pub mod names;
 mod node;
 pub mod options;
 mod parameter;
@@ -12,7 +13,6 @@ pub mod place;
 mod read;
 pub mod restrictions;
 pub mod source;
-pub mod wanted;
 pub mod with;
 
 pub use data::Data;

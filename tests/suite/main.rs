@@ -13,6 +13,8 @@ mod layers;
 mod nist;
 mod own_cases;
 mod readme;
+mod refusals;
 mod reports;
+mod study;
 mod threads;
 mod worked_examples;

@@ -1,0 +1,96 @@
+//! `guyline families`.
+
+use serde_json::{Map, Value, json};
+
+use super::arguments::{Families, ListFormat};
+use super::output::deliver;
+use super::sentence::list;
+use super::status::{Status, Stop};
+use crate::expr::nearest;
+use crate::family::listing::{ListedParameter, Listing, all};
+
+/// Runs the command.
+pub fn run(arguments: &Families) -> Result<Status, Stop> {
+    let families = all();
+    let chosen: Vec<&Listing> = match &arguments.name {
+        None => families.iter().collect(),
+        Some(name) => {
+            let found = families.iter().find(|f| f.name == *name).ok_or_else(|| {
+                let names: Vec<&str> = families.iter().map(|f| f.name.as_str()).collect();
+                let advice = match nearest(name, names.iter().copied()) {
+                    Some(near) => format!("nearest name: {near}"),
+                    None => format!("the families are {}", list(&names)),
+                };
+                Stop::study(format!("no family is called {name}\n    {advice}"))
+            })?;
+            vec![found]
+        }
+    };
+    let text = match (arguments.format, &arguments.name) {
+        (ListFormat::Json, _) => {
+            let rows: Vec<Value> = chosen.iter().map(|f| object(f)).collect();
+            format!("{:#}\n", Value::Array(rows))
+        }
+        (ListFormat::Text, Some(_)) => description(chosen[0]),
+        (ListFormat::Text, None) => overview(&chosen),
+    };
+    deliver(&text, None)?;
+    Ok(Status::Done)
+}
+
+fn object(family: &Listing) -> Value {
+    let parameters: Vec<Value> = family
+        .parameters
+        .iter()
+        .map(|p| {
+            let link = p.links.first().map_or(Value::Null, |l| json!(l));
+            let mut row = Map::new();
+            row.insert("name".into(), json!(p.name));
+            row.insert("range".into(), json!(p.range));
+            row.insert("link".into(), link.clone());
+            if link.is_null() {
+                row.insert("reasons".into(), json!({"link": "it takes no terms"}));
+            }
+            Value::Object(row)
+        })
+        .collect();
+    json!({
+        "name": family.name,
+        "response": family.response,
+        "parameters": parameters,
+        "formula": family.formula,
+        "information": family.information,
+        "source": family.source,
+    })
+}
+
+fn overview(families: &[&Listing]) -> String {
+    let width = families.iter().map(|f| f.name.len()).max().unwrap_or(0);
+    let mut out = String::new();
+    for f in families {
+        let names: Vec<&str> = f.parameters.iter().map(|p| p.name.as_str()).collect();
+        out += &format!("{:width$}  {}; {}\n", f.name, list(&names), f.response);
+    }
+    out + "\nguyline families NAME says more about one.\n"
+}
+
+fn description(family: &Listing) -> String {
+    let mut out = format!("{}: {}\n", family.name, family.response);
+    for p in &family.parameters {
+        out += &format!("  {}\n", parameter(p));
+    }
+    out += &format!("log density: {}\n", family.formula);
+    out += &format!("expected information: {}\n", family.information);
+    out += &format!("source: {}\n", family.source);
+    out
+}
+
+fn parameter(p: &ListedParameter) -> String {
+    let mut out = format!("{} in {}: {}", p.name, p.range, p.meaning);
+    match p.links.as_slice() {
+        [] => {}
+        [one] => out += &format!("; with terms through the link {one}"),
+        [first, rest @ ..] => out += &format!("; with terms through the link {first}, or {}", list(rest)),
+    }
+    out
+}
