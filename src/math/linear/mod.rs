@@ -1,17 +1,20 @@
 //! Dense linear algebra: rank and null space, inertia, definite solves, and the orthogonalisation of a design.
 
+mod condition;
 mod definite;
+mod dot;
 mod eigen;
 mod kkt;
 mod null_space;
 mod orthogonal;
 mod svd;
 
+pub use condition::{centred_condition, scaled_condition};
 pub use definite::{positive_definite_inverse, quadratic_form_inverse};
 pub use eigen::symmetric_eigen;
 pub use kkt::{Inertia, Kkt};
 pub use null_space::{dependent_rows, null_space};
-pub use orthogonal::{Orthogonal, centred_condition, orthogonalise, scaled_condition};
+pub use orthogonal::{Orthogonal, orthogonalise};
 pub use svd::{least_squares, singular_values, svd};
 
 use super::{Error, Matrix};

@@ -23,6 +23,20 @@ const BERNOULLI: [f64; 11] = [
     854513.0 / 138.0,
 ];
 
+/// B_2 / 2!, B_4 / 4!, ...
+const OVER_FACTORIAL: [f64; 11] = {
+    let mut out = BERNOULLI;
+    let mut factorial = 1.0;
+    let mut j = 0;
+    while j < out.len() {
+        let n = 2.0 * (j as f64 + 1.0);
+        factorial *= (n - 1.0) * n;
+        out[j] /= factorial;
+        j += 1;
+    }
+    out
+};
+
 /// psi(x), the derivative of lgamma. NaN at 0, -1, -2, ... Error at most 1e-15 max(1, |psi|) or so.
 ///
 /// Upward recurrence to x >= 10, then the asymptotic series (Abramowitz and Stegun 6.3.18), reflection below zero (6.3.7).
@@ -113,14 +127,12 @@ fn scaled_zeta(s: f64, x: f64) -> f64 {
     }
     let square = 1.0 / (end * end);
     // s (s+1) ... (s+2j-2) B_2j / (2j)! end^-2j, j = 1, 2, ...
-    let mut rising = s;
+    let mut rising = s * square;
     let mut series = 0.0;
-    let mut scale = 0.5 * square;
-    for (j, b) in BERNOULLI.iter().enumerate() {
-        series += b * rising * scale;
-        let n = 2.0 * (j as f64 + 1.0);
-        rising *= (s + n - 1.0) * (s + n);
-        scale *= square / ((n + 1.0) * (n + 2.0));
+    for (j, b) in OVER_FACTORIAL.iter().enumerate() {
+        series += b * rising;
+        let n = s + 2.0 * (j as f64 + 1.0);
+        rising *= (n - 1.0) * n * square;
     }
     sum += power(x / end, s) * (end / (s - 1.0) + 0.5 + end * series);
     if s <= 100.0 && s * libm::fabs(log(x)) < 600.0 {
