@@ -43,7 +43,10 @@ pub(super) fn estimate(name: &str, value: f64, variance: Option<f64>, quantile: 
     }
 }
 
-/// The variance of a quantity with this gradient (delta method).
+/// The variance of a quantity with this gradient (delta method); 0 where its terms cancel to rounding, as they do for a
+/// quantity that the restrictions fix.
 pub(super) fn delta(gradient: &Vector, covariance: &Matrix) -> f64 {
-    (covariance * gradient).dot(gradient)
+    let variance = (covariance * gradient).dot(gradient);
+    let terms = (covariance.abs() * gradient.abs()).dot(&gradient.abs());
+    if variance.abs() <= 1e-13 * terms { 0.0 } else { variance }
 }

@@ -6,10 +6,9 @@ use super::release::Release;
 use super::warning::{self, Warning};
 use super::{InferError, Options, Outcome, Test, block, labelling, likelihood_ratio, multipliers, score, wald};
 use crate::likelihood::{Information, LogLikelihood};
-use crate::math::Vector;
+use crate::math::{Vector, special};
 use crate::restriction::{Quantities, Role, System};
 use crate::solve::{self, Fit, Problem, Verdict};
-use statrs::distribution::{ContinuousCDF, Normal};
 
 const NOT_WANTED: &str = "not asked for";
 const NOTHING_TESTED: &str = "no tested restriction";
@@ -39,7 +38,7 @@ pub fn run(
         options,
         kind: choose(likelihood, &restricted.phi, options)?,
         // From the small tail, which keeps its digits when the confidence is close to 1.
-        quantile: -Normal::standard().inverse_cdf((1.0 - options.confidence) / 2.0),
+        quantile: -special::normal_quantile((1.0 - options.confidence) / 2.0),
         any_tested: system.items().iter().any(|r| r.role == Role::Tested),
     };
     if restricted.certificate.verdict != Verdict::StrictMaximum {
@@ -229,6 +228,7 @@ impl Job<'_> {
         let mut out = Vec::new();
         let free = super::point::free(&point.held, scale).ncols();
         out.extend(warning::few_rows(self.likelihood.weight_total(), free));
+        out.extend(warning::small_counts(self.likelihood.small_counts(&point.fit.phi)));
         let mut redundant = point.fit.redundant.clone();
         let dropped = point.tested_at.iter().enumerate().filter(|(position, _)| !kept.contains(position));
         redundant.extend(dropped.map(|(_, &at)| at));

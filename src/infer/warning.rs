@@ -52,6 +52,18 @@ pub(super) fn few_rows(weight: f64, free: usize) -> Option<Warning> {
     })
 }
 
+/// Cells or bins in which fewer than five rows are expected under the hypothesis.
+pub(super) fn small_counts(counts: Option<(usize, usize)>) -> Option<Warning> {
+    let (small, of) = counts.filter(|c| c.0 > 0)?;
+    Some(Warning::new(
+        "small-counts",
+        format!(
+            "{small} of {of} cells or bins have an expected count under five: chi-square probabilities are rough here; \
+             join rare ones, or a parametric bootstrap would be the remedy"
+        ),
+    ))
+}
+
 /// Restrictions that follow from the others.
 pub(super) fn redundant(names: &[&str]) -> Option<Warning> {
     (!names.is_empty()).then(|| {
