@@ -1,6 +1,7 @@
 //! Of the labellings of a mixture's components that are the same maximum, the one nearest the restricted estimate.
 
 use crate::likelihood::LogLikelihood;
+use crate::math::linear::least_squares;
 use crate::math::{Matrix, Vector};
 use crate::restriction::System;
 use crate::solve::Fit;
@@ -59,7 +60,5 @@ fn multipliers(likelihood: &dyn LogLikelihood, held: &System, fit: &Fit) -> Vect
         rows[(m + i, edge.parameter)] = 1.0;
     }
     let rows = likelihood.coordinates().jacobian(&rows);
-    let singular = rows.transpose().try_svd(true, true, f64::EPSILON, 10_000);
-    let solved = singular.and_then(|s| s.solve(&gradient, 1e-12 * s.singular_values.max()).ok());
-    solved.map_or_else(|| Vector::zeros(m), |x| x.rows(0, m).into_owned())
+    least_squares(&rows.transpose(), &gradient, 1e-12).map_or_else(|_| Vector::zeros(m), |x| x.rows(0, m).into_owned())
 }

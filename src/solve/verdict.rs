@@ -11,6 +11,7 @@ use super::manifold::Manifold;
 use super::newton::{Ended, Newton};
 use super::rank::Rows;
 use super::{Certificate, Edge, End, Fit, Verdict};
+use crate::math::linear::singular_values;
 use crate::math::{Matrix, Vector};
 
 /// The contract's gates.
@@ -274,7 +275,7 @@ fn condition(a: &Matrix, rows: &Rows) -> Option<f64> {
         return None;
     }
     let unit = Matrix::from_fn(rows.kept.len(), a.ncols(), |i, k| a[(rows.kept[i], k)] / a.row(rows.kept[i]).norm());
-    let values = unit.try_svd(false, false, f64::EPSILON, 10_000)?.singular_values;
+    let values = singular_values(&unit).ok()?;
     Some(values.max() / values.min())
 }
 

@@ -96,7 +96,9 @@ log_points = [-1e150, -1e8, -1e5, -99999.5, -1234.5, -100.0, -38.5, -37.0, -30.0
 for x in log_points:
     row("normal_log_cdf", [x], log_cdf(x))
     if x > -1e100:
-        row("inverse_mills", [x], m.exp(-mpf(x) ** 2 / 2 - m.log(2 * m.pi) / 2 - log_cdf(x)))
+        ratio = m.exp(-mpf(x) ** 2 / 2 - m.log(2 * m.pi) / 2 - log_cdf(x))
+        row("inverse_mills", [x], ratio)
+        row("inverse_mills_slope", [x], -ratio * (x + ratio))
 for p in [5e-324, 1e-300, 1e-100, 1e-20, 1e-5, 0.001, 0.025, 0.2, 0.29, 0.3, 0.31, 0.45, 0.49999999, 0.5, 0.5000001, 0.75, 0.9, 0.975, 0.999999, 1 - 2.0 ** -53] + [
         rng.random() for _ in range(20)] + spread(1e-12, 0.1, 20):
     p_exact = mpf(p)

@@ -14,4 +14,6 @@ pub use gamma::{digamma, lgamma, polygamma};
 pub use interval::{normal_interval_slopes, normal_log_interval};
 pub use logistic::{log_logistic, log_mix, log_sum_exp, log1mexp, logistic, logit};
 pub(super) use normal::erfc_scaled_argument;
-pub use normal::{erf, erfc, inverse_mills, normal_cdf, normal_log_cdf, normal_log_density, normal_quantile};
+pub use normal::{
+    erf, erfc, inverse_mills, inverse_mills_slope, normal_cdf, normal_log_cdf, normal_log_density, normal_quantile,
+};

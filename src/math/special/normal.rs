@@ -92,6 +92,21 @@ pub fn inverse_mills(x: f64) -> f64 {
     if x > TAIL { normal_density(x) / normal_cdf(x) } else { -x / (1.0 + mills_series(x)) }
 }
 
+/// The derivative of [`inverse_mills`], -m (x + m): the curvature of log Phi. In the tail x + m, the difference of two large
+/// numbers, comes from the series itself.
+pub fn inverse_mills_slope(x: f64) -> f64 {
+    let m = inverse_mills(x);
+    if x == f64::NEG_INFINITY {
+        -1.0
+    } else if x > TAIL {
+        // From above the density is 0 before x + m overflows.
+        if m == 0.0 { -0.0 } else { -m * (x + m) }
+    } else {
+        let series = mills_series(x);
+        -m * (x * series / (1.0 + series))
+    }
+}
+
 /// The value below which a standard normal falls with probability p; minus and plus infinity at 0 and 1, NaN outside.
 ///
 /// A rational start, then three Halley steps (phi' = -x phi), each of which triples the digits.
