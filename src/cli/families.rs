@@ -1,13 +1,12 @@
 //! `guyline families`.
 
-use serde_json::{Map, Value, json};
-
 use super::arguments::{Families, ListFormat};
 use super::output::deliver;
 use super::sentence::list;
 use super::status::{Status, Stop};
 use crate::expr::nearest;
 use crate::family::listing::{ListedParameter, Listing, all};
+use crate::report::listing;
 
 /// Runs the command.
 pub fn run(arguments: &Families) -> Result<Status, Stop> {
@@ -28,8 +27,8 @@ pub fn run(arguments: &Families) -> Result<Status, Stop> {
     };
     let text = match (arguments.format, &arguments.name) {
         (ListFormat::Json, _) => {
-            let rows: Vec<Value> = chosen.iter().map(|f| object(f)).collect();
-            format!("{:#}\n", Value::Array(rows))
+            let rows: Vec<listing::Family> = chosen.iter().map(|f| row(f)).collect();
+            listing::json(&rows)
         }
         (ListFormat::Text, Some(_)) => description(chosen[0]),
         (ListFormat::Text, None) => overview(&chosen),
@@ -38,30 +37,19 @@ pub fn run(arguments: &Families) -> Result<Status, Stop> {
     Ok(Status::Done)
 }
 
-fn object(family: &Listing) -> Value {
-    let parameters: Vec<Value> = family
-        .parameters
-        .iter()
-        .map(|p| {
-            let link = p.links.first().map_or(Value::Null, |l| json!(l));
-            let mut row = Map::new();
-            row.insert("name".into(), json!(p.name));
-            row.insert("range".into(), json!(p.range));
-            row.insert("link".into(), link.clone());
-            if link.is_null() {
-                row.insert("reasons".into(), json!({"link": "it takes no terms"}));
-            }
-            Value::Object(row)
-        })
-        .collect();
-    json!({
-        "name": family.name,
-        "response": family.response,
-        "parameters": parameters,
-        "formula": family.formula,
-        "information": family.information,
-        "source": family.source,
-    })
+fn row(family: &Listing) -> listing::Family<'_> {
+    listing::Family {
+        name: &family.name,
+        response: &family.response,
+        parameters: family.parameters.iter().map(cell).collect(),
+        formula: &family.formula,
+        information: &family.information,
+        source: &family.source,
+    }
+}
+
+fn cell(p: &ListedParameter) -> listing::Parameter<'_> {
+    listing::Parameter { name: &p.name, range: &p.range, link: p.links.first().copied() }
 }
 
 fn overview(families: &[&Listing]) -> String {

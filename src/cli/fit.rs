@@ -8,9 +8,9 @@ use super::output::{deliver, say, whole, writable};
 use super::sentence::sentence;
 use super::status::{Status, Stop};
 use crate::infer::{self, Outcome};
-use crate::likelihood::LogLikelihood;
+use crate::likelihood::{self, LogLikelihood};
 use crate::report::number::exact;
-use crate::report::{DataFacts, Document, ModelFacts, Named, csv, json, text};
+use crate::report::{self, DataFacts, Document, ModelFacts, Named};
 use crate::restriction::Role;
 use crate::solve::{Search, Step, Verdict};
 use crate::study::{Format, Settings, Study};
@@ -51,9 +51,9 @@ pub fn run(arguments: &Fit) -> Result<Status, Stop> {
     }
     let document = document(&job, outcome);
     let answer = match settings.format {
-        Format::Text => text::render(&document),
-        Format::Json => json::render(&document),
-        Format::Csv => csv::render(std::slice::from_ref(&document)),
+        Format::Text => report::text::render(&document),
+        Format::Json => report::json::render(&document),
+        Format::Csv => report::csv::render(std::slice::from_ref(&document)),
     };
     deliver(&answer, settings.output.as_deref())?;
     let (status, why) = verdict(&document.outcome, settings.gate);
@@ -88,7 +88,7 @@ fn gate_has_a_hypothesis(settings: &Settings, job: &Job) -> Result<(), Stop> {
 /// Sets the number of threads; the answer does not depend on it, so that failing to is no fault.
 fn threads(settings: &Settings) {
     if let Some(n) = settings.threads {
-        let _ = rayon::ThreadPoolBuilder::new().num_threads(n).build_global();
+        likelihood::threads(n);
     }
 }
 

@@ -115,3 +115,10 @@ pub trait LogLikelihood: Sync {
         false
     }
 }
+
+/// Takes this many threads for all sums over rows from here on; results do not depend on it. Only the first call of a
+/// process counts.
+pub fn threads(count: usize) {
+    // A pool that is there already is no fault: any number of threads gives the same answer.
+    let _ = rayon::ThreadPoolBuilder::new().num_threads(count).build_global();
+}

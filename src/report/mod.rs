@@ -7,6 +7,7 @@ pub mod document;
 mod estimates;
 mod failure;
 pub mod json;
+pub mod listing;
 pub mod number;
 mod object;
 #[cfg(test)]
