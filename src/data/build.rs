@@ -50,14 +50,7 @@ impl Work<'_> {
             };
             columns.push(Column { name: self.plan.slots[slot].name.clone(), values });
         }
-        let lines = self.sheet.lines(&self.starts);
-        let unfold = self.plan.rows_a_record();
-        let lines: Vec<u32> = if unfold == 1 {
-            self.pick(lines, whole)
-        } else {
-            self.pick(lines.into_iter().flat_map(|l| std::iter::repeat_n(l, unfold)).collect(), whole)
-        };
-        let plain = lines.iter().zip(2u32..).all(|(line, expected)| *line == expected);
+        let lines = self.lines(whole);
         Ok(Table {
             file: self.sheet.file.to_owned(),
             sha256: String::new(),
@@ -65,8 +58,23 @@ impl Work<'_> {
             rows: kept,
             weights,
             counts,
-            lines: if plain { Vec::new() } else { lines },
+            lines,
         })
+    }
+
+    /// The line of each stored row; none where row i stands on line i + 2.
+    fn lines(&self, whole: bool) -> Vec<u32> {
+        let unfold = self.plan.rows_a_record();
+        // Each record takes one line at least: if the last stands where it would with one each, all do.
+        let last = self.starts.last().map_or(0, |start| self.sheet.line(*start));
+        if whole && unfold == 1 && last == self.starts.len() + 1 {
+            return Vec::new();
+        }
+        let lines = self.sheet.lines(&self.starts);
+        let lines = lines.into_iter().flat_map(|l| std::iter::repeat_n(l, unfold)).collect();
+        let lines = self.pick(lines, whole);
+        let plain = lines.iter().zip(2u32..).all(|(line, expected)| *line == expected);
+        if plain { Vec::new() } else { lines }
     }
 
     /// The values of the rows that are stored.

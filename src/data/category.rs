@@ -2,7 +2,7 @@
 
 use super::gap::{CODE_LIMIT, Gap};
 use super::number;
-use super::scan::bare;
+use super::sheet::bare;
 use std::collections::HashMap;
 
 /// Gives each label a code, in the order met; levels listed beforehand come first.

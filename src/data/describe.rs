@@ -133,7 +133,7 @@ impl Work<'_> {
     /// The text of a cell, unless the column is made.
     fn cell(&self, slot: usize, row: usize) -> Option<Vec<u8>> {
         let column = self.file_column(slot, row)?;
-        Some(number::trim(self.sheet.record(self.start(row)).get(column)?).to_vec())
+        Some(number::trim(&self.sheet.cell(self.start(row), column)?).to_vec())
     }
 
     /// `log of -3, where area is "-3"`.

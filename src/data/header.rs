@@ -16,8 +16,8 @@ pub(super) struct Header {
 
 impl Header {
     /// From the cells of the first record.
-    pub fn new(file: &str, delimiter: char, cells: &csv::ByteRecord) -> Header {
-        let names = cells.iter().map(|cell| super::scan::bare(&String::from_utf8_lossy(cell)).to_owned()).collect();
+    pub fn new<'c>(file: &str, delimiter: char, cells: impl Iterator<Item = &'c [u8]>) -> Header {
+        let names = cells.map(|cell| super::sheet::bare(&String::from_utf8_lossy(cell)).to_owned()).collect();
         Header { file: file.to_owned(), delimiter, names }
     }
 
@@ -86,7 +86,7 @@ mod tests {
     use super::{Header, nth};
 
     fn header(cells: &[&str]) -> Header {
-        Header::new("tiles.csv", ',', &csv::ByteRecord::from(cells.to_vec()))
+        Header::new("tiles.csv", ',', cells.iter().map(|c| c.as_bytes()))
     }
 
     #[test]

@@ -40,6 +40,10 @@ impl Work<'_> {
                 Cells::Number(values) => {
                     let end = matches!(slot.kind, Kind::Fixed(Form::Lower | Form::Upper));
                     for sort in &slot.sorts {
+                        if *sort == Sort::Number && !end {
+                            // Nothing else was read.
+                            continue;
+                        }
                         let fits =
                             |x: f64| sort.allows(x) || (end && x.is_infinite() && *sort != Sort::Number) || x.is_nan();
                         let bad = values.iter().zip(&self.states).enumerate();

@@ -30,22 +30,25 @@ pub(super) fn parse(cell: &[u8], decimal: u8) -> Option<f64> {
         _ => (false, 0),
     };
     let mut digits: u64 = 0;
-    let first = at;
-    while let Some(d) = digit(cell, at) {
-        digits = digits.wrapping_mul(10).wrapping_add(d);
-        at += 1;
-    }
-    let mut seen = at - first;
+    let mut run = |at: &mut usize| {
+        let first = *at;
+        while *at < cell.len() {
+            let d = cell[*at].wrapping_sub(b'0');
+            if d > 9 {
+                break;
+            }
+            digits = digits.wrapping_mul(10).wrapping_add(u64::from(d));
+            *at += 1;
+        }
+        *at - first
+    };
+    let mut seen = run(&mut at);
     let mut power: i64 = 0;
     if cell.get(at) == Some(&decimal) {
         at += 1;
-        let point = at;
-        while let Some(d) = digit(cell, at) {
-            digits = digits.wrapping_mul(10).wrapping_add(d);
-            at += 1;
-        }
-        power = -((at - point) as i64);
-        seen += at - point;
+        let places = run(&mut at);
+        power = -(places as i64);
+        seen += places;
     }
     if seen == 0 {
         return None;

@@ -10,7 +10,7 @@
 
 use super::error::DataError;
 use super::request::Request;
-use super::scan::Sheet;
+use super::sheet::Sheet;
 use super::source::{Source, sniff};
 use super::table::Table;
 use super::work::Work;
@@ -25,9 +25,22 @@ use sha2::{Digest, Sha256};
 pub fn read(source: &Source, request: &Request) -> Result<Table, DataError> {
     check_signs(request)?;
     let bytes = source.bytes()?;
-    let mut table = Work::open(source.shown(), sniff(source.shown(), &bytes)?, request)?.finish()?;
-    table.sha256 = Sha256::digest(&bytes).iter().map(|b| format!("{b:02x}")).collect();
-    Ok(table)
+    let (table, sha256) =
+        beside(&bytes, || Work::open(source.shown(), sniff(source.shown(), &bytes)?, request)?.finish());
+    Ok(Table { sha256, ..table? })
+}
+
+/// The work, and the digest of the bytes, made on another thread meanwhile where there is one and it pays.
+fn beside<T>(bytes: &[u8], work: impl FnOnce() -> T) -> (T, String) {
+    let digest = || Sha256::digest(bytes).iter().map(|b| format!("{b:02x}")).collect::<String>();
+    if bytes.len() < 1 << 20 {
+        return (work(), digest());
+    }
+    std::thread::scope(|scope| {
+        let other = std::thread::Builder::new().spawn_scoped(scope, digest).ok();
+        let done = work();
+        (done, other.and_then(|t| t.join().ok()).unwrap_or_else(digest))
+    })
 }
 
 /// The names in the header, in order, trimmed.

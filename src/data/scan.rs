@@ -3,9 +3,8 @@
 use super::category::Interner;
 use super::error::DataError;
 use super::gap::{CODE_LIMIT, Gap};
-use super::header::Header;
 use super::number;
-use super::request::Request;
+use super::sheet::{Sheet, bare};
 
 /// Where the cells of a column come from.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -57,26 +56,16 @@ impl Cells {
     /// Whether any row has no value.
     pub fn has_gaps(&self) -> bool {
         match self {
-            Cells::Number(values) => values.iter().any(|x| x.is_nan()),
-            Cells::Label { codes, .. } => codes.iter().any(|c| *c >= CODE_LIMIT),
+            Cells::Number(values) => values.chunks(1024).any(|c| c.iter().fold(false, |found, x| found | x.is_nan())),
+            Cells::Label { codes, .. } => {
+                codes.chunks(1024).any(|c| c.iter().fold(false, |found, x| found | (*x >= CODE_LIMIT)))
+            }
         }
     }
 }
 
-/// The bytes of a table and how they are written.
-pub(super) struct Sheet<'a> {
-    pub file: &'a str,
-    bytes: &'a [u8],
-    /// Where the records after the header begin.
-    body: usize,
-    delimiter: u8,
-    pub decimal: u8,
-    /// Missing marks, trimmed.
-    pub marks: Vec<Vec<u8>>,
-    pub header: Header,
-}
-
 /// What a pass found.
+#[derive(Default)]
 pub(super) struct Scanned {
     /// Where each record begins; records with a wrong number of cells are not among them.
     pub starts: Vec<usize>,
@@ -88,95 +77,33 @@ pub(super) struct Scanned {
     pub ragged_count: usize,
 }
 
-impl<'a> Sheet<'a> {
-    /// Reads the header. The request's delimiter and decimal sign must be ASCII.
-    pub fn open(file: &'a str, bytes: &'a [u8], request: &Request) -> Result<Sheet<'a>, DataError> {
-        let mut sheet = Sheet {
-            file,
-            bytes,
-            body: 0,
-            delimiter: request.delimiter as u8,
-            decimal: request.decimal as u8,
-            marks: request.missing.iter().map(|m| m.trim().as_bytes().to_vec()).collect(),
-            header: Header::new(file, request.delimiter, &csv::ByteRecord::new()),
-        };
-        let mut reader = sheet.reader(0);
-        let mut record = csv::ByteRecord::new();
-        let names = loop {
-            if !sheet.next(&mut reader, &mut record)? {
-                return sheet.unusable("the file has no header", "the first line must hold the names of the columns");
-            }
-            let blank = record.iter().all(|cell| number::trim(cell).is_empty());
-            if !blank || record.len() > 1 {
-                break Header::new(file, request.delimiter, &record);
-            }
-        };
-        if names.names.iter().all(String::is_empty) {
-            return sheet.unusable("the header holds no names", "the first line must hold the names of the columns");
-        }
-        sheet.header = names;
-        sheet.body = usize::try_from(reader.position().byte()).unwrap_or(bytes.len());
-        if sheet.body >= bytes.len() {
-            sheet.check_quotes(0)?;
-        }
-        Ok(sheet)
-    }
-
-    fn unusable<T>(&self, what: impl Into<String>, advice: &str) -> Result<T, DataError> {
-        Err(DataError::Unusable { file: self.file.to_owned(), what: what.into(), advice: advice.to_owned() })
-    }
-
-    fn reader(&self, from: usize) -> csv::Reader<&'a [u8]> {
-        csv::ReaderBuilder::new()
-            .delimiter(self.delimiter)
-            .has_headers(false)
-            .flexible(true)
-            .from_reader(&self.bytes[from.min(self.bytes.len())..])
-    }
-
-    fn next(&self, reader: &mut csv::Reader<&'a [u8]>, record: &mut csv::ByteRecord) -> Result<bool, DataError> {
-        // Reading bytes from memory cannot fail; should the crate think otherwise, its words are passed on.
-        reader.read_byte_record(record).or_else(|e| self.unusable(e.to_string(), "give a CSV file"))
-    }
-
-    /// Past line ends: where the record that is read from `at` on really begins.
-    fn begin(&self, at: usize) -> usize {
-        let rest = self.bytes.get(at..).unwrap_or(&[]);
-        at + rest.iter().take_while(|b| matches!(b, b'\r' | b'\n')).count()
-    }
-
+impl Sheet<'_> {
     /// Reads all records, the demanded columns only. Every record gives `unfold` rows.
     pub fn scan(&self, demands: &[Demand], unfold: usize) -> Result<Scanned, DataError> {
         let width = self.header.names.len();
-        let mut columns: Vec<Reading> = demands.iter().map(|d| Reading::new(d, &self.marks)).collect();
-        let mut found = Scanned { starts: Vec::new(), cells: Vec::new(), ragged: Vec::new(), ragged_count: 0 };
-        let mut reader = self.reader(self.body);
-        let mut record = csv::ByteRecord::new();
+        let rows = self.rows_guess();
+        let mut columns: Vec<Reading> =
+            demands.iter().map(|d| Reading::new(d, &self.marks, rows.saturating_mul(unfold))).collect();
+        let mut found = Scanned { starts: Vec::with_capacity(rows), ..Scanned::default() };
+        let mut records = self.records(self.body);
         let mut last = self.body;
-        while self.next(&mut reader, &mut record)? {
-            let at = record.position().map_or(0, |p| p.byte());
-            let start = self.begin(self.body + usize::try_from(at).unwrap_or(usize::MAX));
-            if record.len() != width {
-                let blank = record.len() == 1 && number::trim(&record[0]).is_empty();
-                if blank && self.bytes.get(start) != Some(&b'"') {
-                    continue;
-                }
-                last = start;
+        while records.advance() {
+            if (records.len() != width || width == 1) && self.is_blank(&records) {
+                continue;
+            }
+            last = records.start();
+            if records.len() != width {
                 found.ragged_count += 1;
                 if found.ragged.len() < super::error::SHOWN {
-                    found.ragged.push((start, record.len()));
+                    found.ragged.push((last, records.len()));
                 }
                 continue;
             }
-            if width == 1 && self.bytes.get(start) != Some(&b'"') && number::trim(&record[0]).is_empty() {
-                continue;
-            }
-            last = start;
-            found.starts.push(start);
+            found.starts.push(last);
             for (demand, column) in demands.iter().zip(&mut columns) {
                 match &demand.origin {
-                    Origin::Column(i) => column.push(&record[*i], unfold, self),
-                    Origin::Columns(all) => all.iter().for_each(|i| column.push(&record[*i], 1, self)),
+                    Origin::Column(i) => column.push(records.cell(*i), unfold, self),
+                    Origin::Columns(all) => all.iter().for_each(|i| column.push(records.cell(*i), 1, self)),
                 }
             }
         }
@@ -186,70 +113,6 @@ impl<'a> Sheet<'a> {
         }
         found.cells = columns.into_iter().map(Reading::finish).collect();
         Ok(found)
-    }
-
-    /// A quote that is never closed swallows all that follows; it can only be in the last record.
-    fn check_quotes(&self, start: usize) -> Result<(), DataError> {
-        #[derive(PartialEq)]
-        enum State {
-            Start,
-            Bare,
-            Quoted,
-            Closing,
-        }
-        let mut state = State::Start;
-        for b in &self.bytes[start.min(self.bytes.len())..] {
-            state = match (state, b) {
-                (State::Start, b'"') => State::Quoted,
-                (State::Quoted, b'"') => State::Closing,
-                (State::Closing, b'"') => State::Quoted,
-                (State::Quoted, _) => State::Quoted,
-                (_, b) if *b == self.delimiter => State::Start,
-                (_, b'\r' | b'\n') => State::Start,
-                _ => State::Bare,
-            };
-        }
-        if state == State::Quoted {
-            let line = self.line(self.begin(start));
-            return self.unusable(
-                format!("a cell of the row that starts on line {line} opens a quote that is never closed"),
-                "close it; a quote inside a quoted cell is written twice",
-            );
-        }
-        Ok(())
-    }
-
-    /// The cells of the record that begins at `start`.
-    pub fn record(&self, start: usize) -> csv::ByteRecord {
-        let mut record = csv::ByteRecord::new();
-        // A record that was read once can be read again.
-        let _ = self.reader(start).read_byte_record(&mut record);
-        record
-    }
-
-    /// The sign that ends lines: a carriage return only where there is no line feed at all.
-    fn line_end(&self) -> u8 {
-        if self.bytes.contains(&b'\n') { b'\n' } else { b'\r' }
-    }
-
-    /// The line on which a byte stands.
-    pub fn line(&self, at: usize) -> usize {
-        let end = self.line_end();
-        1 + self.bytes[..at.min(self.bytes.len())].iter().filter(|b| **b == end).count()
-    }
-
-    /// The lines on which records start.
-    pub fn lines(&self, starts: &[usize]) -> Vec<u32> {
-        let end = self.line_end();
-        let (mut at, mut line) = (0, 1u32);
-        starts
-            .iter()
-            .map(|start| {
-                line = line.saturating_add(self.bytes[at..*start].iter().map(|b| u32::from(*b == end)).sum());
-                at = *start;
-                line
-            })
-            .collect()
     }
 }
 
@@ -261,12 +124,12 @@ enum Reading {
 }
 
 impl Reading {
-    fn new(demand: &Demand, marks: &[Vec<u8>]) -> Reading {
+    fn new(demand: &Demand, marks: &[Vec<u8>], rows: usize) -> Reading {
         match demand.form {
-            Form::Number => Reading::Number(Vec::new()),
-            Form::Lower => Reading::End(Vec::new(), f64::NEG_INFINITY),
-            Form::Upper => Reading::End(Vec::new(), f64::INFINITY),
-            Form::Label => Reading::Label(Vec::new(), Interner::new(&demand.levels, marks)),
+            Form::Number => Reading::Number(Vec::with_capacity(rows)),
+            Form::Lower => Reading::End(Vec::with_capacity(rows), f64::NEG_INFINITY),
+            Form::Upper => Reading::End(Vec::with_capacity(rows), f64::INFINITY),
+            Form::Label => Reading::Label(Vec::with_capacity(rows), Interner::new(&demand.levels, marks)),
         }
     }
 
@@ -324,16 +187,6 @@ fn second_look(raw: &[u8], sheet: &Sheet<'_>) -> f64 {
     number::parse(plain, sheet.decimal).unwrap_or(Gap::Unreadable.number())
 }
 
-/// A text without spaces round it; a quote after a space (which does not quote in CSV) is taken as meant.
-pub(super) fn bare(text: &str) -> &str {
-    let trimmed = text.trim();
-    let spaced = text.starts_with(char::is_whitespace);
-    match trimmed.strip_prefix('"').and_then(|t| t.strip_suffix('"')) {
-        Some(inner) if spaced && !inner.contains('"') => inner.trim(),
-        _ => trimmed,
-    }
-}
-
 /// The same for bytes that may not be text.
 fn unquote(cell: &[u8]) -> &[u8] {
     match cell {
@@ -344,7 +197,7 @@ fn unquote(cell: &[u8]) -> &[u8] {
 
 #[cfg(test)]
 mod tests {
-    use super::{Cells, Demand, Form, Origin, Sheet, bare};
+    use super::{Cells, Demand, Form, Origin, Sheet};
     use crate::data::request::Request;
 
     fn numbers(text: &str, origin: Origin, unfold: usize) -> (Vec<f64>, Vec<u32>, Vec<(usize, usize)>) {
@@ -385,18 +238,7 @@ mod tests {
     }
 
     #[test]
-    fn an_open_quote_is_found() {
-        for text in ["a,b\n1,\"2\n3,4\n", "a,\"b\n1,2", "a,b\n1,\"\"\"", "a\n\""] {
-            let open = Sheet::open("f", text.as_bytes(), &Request::default());
-            let error = open.and_then(|s| s.scan(&[], 1).map(|_| ())).unwrap_err().to_string();
-            assert!(error.contains("never closed"), "{error}");
-        }
-        assert!(numbers("a,b\n1,\"x\"\"\"\n", Origin::Column(0), 1).2.is_empty());
-    }
-
-    #[test]
-    fn quotes_after_a_space_are_taken_as_meant() {
-        assert_eq!((bare(" \"north\" "), bare("\"north\""), bare("  n  ")), ("north", "\"north\"", "n"));
+    fn numbers_quoted_after_a_space_are_taken_as_meant() {
         assert_eq!(numbers("a,b\n \"1\",2\n", Origin::Column(0), 1).0, [1.0]);
     }
 }

@@ -7,7 +7,8 @@ use super::fault::{Entry, Ledger, Problem};
 use super::gap::Gap;
 use super::plan::{Kind, Place, Plan, Step};
 use super::request::Request;
-use super::scan::{Cells, Demand, Form, Sheet};
+use super::scan::{Cells, Demand, Form};
+use super::sheet::Sheet;
 use super::table::Table;
 use crate::expr::rows::ColumnView;
 
