@@ -1,6 +1,6 @@
 //! A fit with what is inferred from it, or with the reason why nothing is.
 
-use super::covariance::{covariance, delta, estimate, estimates};
+use super::covariance::{Covariance, estimate, estimates};
 use super::point::Point;
 use super::{Block, Estimate, Multiplier};
 use crate::likelihood::Information;
@@ -16,20 +16,20 @@ pub(super) fn of_maximum(
     quantile: f64,
     multipliers: Vec<Multiplier>,
 ) -> Block {
-    let (matrix, reason) = match covariance(point, kind, tested) {
-        Ok(matrix) => (Some(matrix), None),
+    let (covariance, reason) = match Covariance::new(point, kind, tested) {
+        Ok(covariance) => (Some(covariance), None),
         Err(reason) => (None, Some(reason)),
     };
     let values = quantities.values(&point.fit.theta);
     let gradients = quantities.gradient(&point.fit.theta);
     let quantity = |(i, name): (usize, &String)| -> Estimate {
-        let variance = matrix.as_ref().map(|c| delta(&gradients.row(i).transpose(), c));
-        estimate(name, values[i], variance, quantile, None)
+        let se = covariance.as_ref().map(|c| c.delta(&gradients.row(i).transpose()));
+        estimate(name, values[i], se, quantile, None)
     };
     Block {
-        estimates: estimates(point, matrix.as_ref(), quantile),
+        estimates: estimates(point, covariance.as_ref(), quantile),
         quantities: quantities.names().iter().enumerate().map(quantity).collect(),
-        covariance: matrix,
+        covariance: covariance.map(|c| c.matrix()),
         multipliers,
         reason,
         fit: point.fit.clone(),

@@ -125,8 +125,8 @@ impl<'a> Point<'a> {
         kept
     }
 
-    /// Z (Z' I Z)^-1 Z' with Z the free directions under `rows`, and the filling. `Err` says in words that the matrix is
-    /// not positive definite there, and which kinds would serve.
+    /// C = Z (Z' I Z)^-1 Z' by its root, with Z the free directions under `rows`, and what was inverted. `Err` says in
+    /// words that the matrix is not positive definite there, and which kinds would serve.
     pub fn inverse(
         &self,
         rows: &Matrix,
@@ -134,15 +134,14 @@ impl<'a> Point<'a> {
         multipliers: &Vector,
     ) -> Result<(Matrix, Sandwich), String> {
         let parts = sandwich(self, kind, multipliers, rows)?;
-        match projected_inverse(rows, &parts.bread) {
-            Ok(c) => Ok((c, parts)),
+        match root_of_inverse(rows, &parts.bread) {
+            Ok(root) => Ok((root, parts)),
             Err(ratio) => {
                 let serving: Vec<&str> = [Information::Expected, Information::Outer, Information::Observed]
                     .into_iter()
                     .filter(|&other| other != kind && !(kind == Information::Robust && other == Information::Observed))
                     .filter(|&other| {
-                        sandwich(self, other, multipliers, rows)
-                            .is_ok_and(|s| projected_inverse(rows, &s.bread).is_ok())
+                        sandwich(self, other, multipliers, rows).is_ok_and(|s| root_of_inverse(rows, &s.bread).is_ok())
                     })
                     .map(Information::text)
                     .collect();
@@ -234,21 +233,21 @@ pub(super) fn free(rows: &Matrix, scale: &Vector) -> Matrix {
     z
 }
 
-/// C = Z (Z' I Z)^-1 Z'; `Err` holds the smallest eigenvalue of Z' I Z over the largest in size.
-fn projected_inverse(rows: &Matrix, bread: &Matrix) -> Result<Matrix, f64> {
+/// R with R R' = Z (Z' I Z)^-1 Z', n by the number of free directions; `Err` holds the smallest eigenvalue of Z' I Z over
+/// the largest in size. Through the root what cannot vary keeps a variance of 0 to rounding, which C itself would cancel
+/// to half the digits.
+fn root_of_inverse(rows: &Matrix, bread: &Matrix) -> Result<Matrix, f64> {
     let z = free(rows, &Point::scale(bread));
-    let n = bread.nrows();
     if z.ncols() == 0 {
-        return Ok(Matrix::zeros(n, n));
+        return Ok(z);
     }
     let inner = symmetric(&z.tr_mul(&(bread * &z)));
     let (eigenvalues, _) = symmetric_eigen(&inner).map_err(|_| f64::NAN)?;
     let (smallest, largest) = (eigenvalues[0], eigenvalues.amax());
-    if !(smallest > DEFINITE * largest) {
-        return Err(smallest / largest);
-    }
-    let factor = inner.cholesky().ok_or(smallest / largest)?;
-    Ok(symmetric(&(&z * factor.solve(&z.transpose()))))
+    let definite = smallest > DEFINITE * largest;
+    let factor = inner.cholesky().filter(|_| definite).ok_or(smallest / largest)?;
+    let half = factor.l().solve_lower_triangular(&z.transpose()).ok_or(smallest / largest)?;
+    Ok(half.transpose())
 }
 
 /// The symmetric part, so that rounding does not make a matrix lopsided.

@@ -26,7 +26,8 @@ pub(super) struct Release {
 impl Release {
     /// At a restricted or an unrestricted fit; `kept` from [`Point::independent`].
     pub fn new(point: &Point, kind: Information, kept: Vec<usize>) -> Result<Release, String> {
-        let (c, parts) = point.inverse(&point.held, kind, &point.held_multipliers)?;
+        let (root, parts) = point.inverse(&point.held, kind, &point.held_multipliers)?;
+        let c = &root * root.transpose();
         let h = point.tested.select_rows(&kept);
         let v = &h * &c * h.transpose();
         let m = match parts.filling {

@@ -16,11 +16,12 @@ pub(super) fn section(document: &Document) -> String {
     } else {
         "What are the estimates, with every restriction imposed?\n"
     };
+    let noise = 2.0 * block.fit.certificate.feasibility;
     let mut out = String::from(question);
-    out.push_str(&lines("parameter", &block.estimates));
+    out.push_str(&lines("parameter", &block.estimates, noise));
     if !block.quantities.is_empty() {
         out.push('\n');
-        out.push_str(&lines("quantity", &block.quantities));
+        out.push_str(&lines("quantity", &block.quantities, noise));
     }
     let confidence = short(100.0 * document.outcome.confidence, 4);
     let explain = match &block.reason {
@@ -31,10 +32,11 @@ pub(super) fn section(document: &Document) -> String {
     out
 }
 
-fn lines(what: &str, estimates: &[Estimate]) -> String {
+fn lines(what: &str, estimates: &[Estimate], noise: f64) -> String {
     let longest = estimates.iter().map(|e| e.name.chars().count()).filter(|&n| n <= NAME).max().unwrap_or(0);
     let name = longest.max(what.len());
-    let cells: Vec<[String; 4]> = estimates.iter().map(cells).collect();
+    let decimals = shared_decimals(estimates);
+    let cells: Vec<[String; 4]> = estimates.iter().map(|e| cells(e, decimals, noise)).collect();
     let width = |column: usize, head: &str| {
         cells.iter().map(|c| c[column].chars().count()).chain([head.len()]).max().unwrap_or(0) + 2
     };
@@ -61,22 +63,42 @@ fn lines(what: &str, estimates: &[Estimate]) -> String {
     out
 }
 
-/// The four numbers of one line, with the decimals that give the standard error four digits.
-fn cells(e: &Estimate) -> [String; 4] {
+/// Decimals that give the smallest standard error three digits; `None` where that would give the largest number of the
+/// table more than ten.
+fn shared_decimals(estimates: &[Estimate]) -> Option<usize> {
+    let ses: Vec<f64> = estimates.iter().filter_map(|e| e.se).filter(|&se| se > 0.0).collect();
+    let smallest = ses.iter().copied().fold(f64::INFINITY, f64::min);
+    let largest = estimates
+        .iter()
+        .flat_map(|e| [Some(e.value), e.lower, e.upper])
+        .flatten()
+        .fold(0.0f64, |most, x| most.max(x.abs()));
+    let decimals = three_digits(smallest)?;
+    let before_the_point = largest.max(1.0).log10().floor() as usize + 1;
+    (decimals + before_the_point <= 10).then_some(decimals)
+}
+
+/// Decimals that show three digits of a standard error.
+fn three_digits(se: f64) -> Option<usize> {
+    let decimals = 2 - se.log10().floor() as i32;
+    (se.is_finite() && se > 0.0 && decimals <= 8).then_some(decimals.max(0) as usize)
+}
+
+/// The four numbers of one line. `noise` is how exactly the restrictions hold: a fixed value within it is 0.
+fn cells(e: &Estimate, decimals: Option<usize>, noise: f64) -> [String; 4] {
     let blank = String::new;
+    let fixed = |x: f64| if x.abs() <= noise { "0".to_string() } else { short(x, 6) };
     let (Some(se), Some(low), Some(high)) = (e.se, e.lower, e.upper) else {
         return [blank(), short(e.value, 6), blank(), "none".to_string()];
     };
     if se == 0.0 {
-        return [blank(), short(e.value, 6), blank(), "0, fixed".to_string()];
+        return [blank(), fixed(e.value), blank(), "0, fixed".to_string()];
     }
-    let largest = e.value.abs().max(low.abs()).max(high.abs());
-    let decimals = 3 - se.log10().floor() as i32;
-    if largest < 1e7 && decimals <= 8 {
-        let decimals = decimals.max(0) as usize;
-        let plain = |x: f64| format!("{x:.decimals$}");
-        [plain(low), plain(e.value), plain(high), plain(se)]
-    } else {
-        [short(low, 6), short(e.value, 6), short(high, 6), short(se, 4)]
+    match decimals.or_else(|| three_digits(se).filter(|_| e.value.abs().max(low.abs()).max(high.abs()) < 1e7)) {
+        Some(decimals) => {
+            let plain = |x: f64| format!("{x:.decimals$}");
+            [plain(low), plain(e.value), plain(high), plain(se)]
+        }
+        None => [short(low, 6), short(e.value, 6), short(high, 6), short(se, 3)],
     }
 }

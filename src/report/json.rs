@@ -7,7 +7,8 @@ use crate::restriction::Role;
 use crate::solve::{Direction, End, Verdict};
 use serde_json::{Map, Value};
 
-const WIDTH: usize = 120;
+/// Wide enough for an estimate, with all its digits, to stand on one line.
+const WIDTH: usize = 200;
 
 /// One document, laid out over several lines.
 pub fn render(document: &Document) -> String {

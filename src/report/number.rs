@@ -52,15 +52,15 @@ pub fn probability(p: f64, log10: f64) -> String {
         return short(p, 2);
     }
     if p > 1e-300 {
-        return tidy(&format!("{p:.1e}"));
+        return format!("{p:.1e}");
     }
     if log10.is_finite() {
         let exponent = log10.floor();
         let mantissa = 10f64.powf(log10 - exponent);
         return if mantissa >= 9.95 {
-            format!("1e{:.0}", exponent + 1.0)
+            format!("1.0e{:.0}", exponent + 1.0)
         } else {
-            tidy(&format!("{mantissa:.1}e{exponent:.0}"))
+            format!("{mantissa:.1}e{exponent:.0}")
         };
     }
     "0".into()
@@ -130,7 +130,7 @@ mod tests {
             (0.05382, 0.0, "0.054"),
             (0.0017321, 0.0, "0.0017"),
             (3.21e-9, 0.0, "3.2e-9"),
-            (2.0e-9, 0.0, "2e-9"),
+            (2.0e-9, 0.0, "2.0e-9"),
             (0.0, -411.5, "3.2e-412"),
             (0.0, f64::NEG_INFINITY, "0"),
         ];

@@ -65,7 +65,7 @@ pub(super) fn lay_out(value: &Value, width: usize) -> String {
 }
 
 fn write(value: &Value, width: usize, indent: usize, before: usize, out: &mut String) {
-    let flat = value.to_string();
+    let flat = flat(value);
     let members = match value {
         Value::Array(items) if !items.is_empty() => items.len(),
         Value::Object(map) if !map.is_empty() => map.len(),
@@ -93,6 +93,18 @@ fn write(value: &Value, width: usize, indent: usize, before: usize, out: &mut St
     }
     out.push_str(&" ".repeat(indent));
     out.push(close);
+}
+
+/// On one line, with a space after each comma and colon.
+fn flat(value: &Value) -> String {
+    match value {
+        Value::Array(items) => format!("[{}]", items.iter().map(flat).collect::<Vec<_>>().join(", ")),
+        Value::Object(map) => {
+            let member = |(key, item): (&String, &Value)| format!("{}: {}", Value::from(key.as_str()), flat(item));
+            format!("{{{}}}", map.iter().map(member).collect::<Vec<_>>().join(", "))
+        }
+        plain => plain.to_string(),
+    }
 }
 
 #[cfg(test)]

@@ -134,9 +134,9 @@ fn pull(m: &Multiplier) -> String {
     if let Some(gap) = m.gap {
         let size = short(gap.abs(), 4);
         second.push_str(&match gap {
-            g if g > 0.0 => format!("; let free, it would be {size} above the right side"),
-            g if g < 0.0 => format!("; let free, it would be {size} below the right side"),
-            _ => "; let free, both sides would be equal".to_string(),
+            g if g > 0.0 => format!("; with every tested restriction let go it would be {size} above the right side"),
+            g if g < 0.0 => format!("; with every tested restriction let go it would be {size} below the right side"),
+            _ => "; with every tested restriction let go both sides would be equal".to_string(),
         });
     }
     wrap(&first, 4, true) + &wrap(&second, 4, true)
@@ -196,13 +196,16 @@ fn certificate(block: &Block) -> String {
         let condition = c.condition.map_or_else(String::new, |k| format!(" (condition {})", short(k, 2)));
         let one = c.restrictions == 1;
         say.push(format!(
-            "{} to {} and {rank}{condition}.",
+            "{} {} and {rank}{condition}.",
             if one { "The restriction holds" } else { "The restrictions hold" },
-            tiny(c.feasibility)
+            if c.feasibility == 0.0 { "exactly".to_string() } else { format!("to {}", tiny(c.feasibility)) }
         ));
     }
     say.push(format!("What slope is left is {} on the scale of standard errors.", tiny(c.stationarity)));
     say.push(match (c.curvature_min, c.curvature_max) {
+        (Some(low), Some(high)) if short(low, 2) == short(high, 2) => {
+            format!("The likelihood falls off in every free direction (scaled curvature {}).", short(low, 2))
+        }
         (Some(low), Some(high)) => format!(
             "The likelihood falls off in every free direction (scaled curvature {} to {}).",
             short(low, 2),

@@ -228,6 +228,11 @@ fn quantities_by_the_delta_method() {
     close(quantity.value, s0 * s0);
     close(quantity.se.unwrap(), s0 * s0 * (2.0 / n).sqrt());
     close(quantity.upper.unwrap() - quantity.value, 1.959963984540054 * quantity.se.unwrap());
+    // A quantity that the restriction fixes has no spread, also where its terms cancel.
+    let quantities =
+        Quantities::compile(&[definition("fixed", "mean / sd - 7 * log(sd / mean)")], &names, &[]).unwrap();
+    let fixed = run(&darwin, &system(&darwin, &[], &["mean / 3 = sd"]), &quantities, &Options::default()).unwrap();
+    assert_eq!(fixed.restricted.quantities[0].se, Some(0.0));
     let s2 = s0 * s0 - mean * mean;
     close(outcome.unrestricted.unwrap().quantities[0].se.unwrap(), s2 * (2.0 / n).sqrt());
 }
