@@ -4,6 +4,7 @@ mod condition;
 mod definite;
 mod dot;
 mod eigen;
+mod householder;
 mod kkt;
 mod null_space;
 mod orthogonal;
