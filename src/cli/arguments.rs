@@ -64,6 +64,7 @@ pub struct Arguments {
 
 /// The commands.
 #[derive(Debug, Subcommand)]
+#[allow(clippy::large_enum_variant, reason = "one value a process")]
 pub enum Command {
     /// Fit under the restrictions: estimates, multipliers, tests, certificate
     #[command(long_about = FIT, after_help = FIT_EXAMPLES)]

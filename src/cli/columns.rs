@@ -55,7 +55,7 @@ pub fn uses(study: &Study, column: &str) -> Vec<String> {
 }
 
 /// Columns that stand alone or in products among the terms of some parameter.
-pub fn terms<'a>(study: &'a Study) -> impl Iterator<Item = &'a str> {
+pub fn terms(study: &Study) -> impl Iterator<Item = &str> {
     study.model.parameters.iter().flat_map(|s| match &s.form {
         Form::Terms(terms) => terms.terms.iter().flatten().map(String::as_str).collect::<Vec<_>>(),
         _ => Vec::new(),

@@ -56,7 +56,7 @@ fn of_term(column: &str, values: &[f64]) -> Option<String> {
             super::sentence::list(&list)
         ));
     }
-    if largest > HUGE || largest < 1.0 / HUGE {
+    if !(1.0 / HUGE..=HUGE).contains(&largest) {
         return Some(format!(
             "the largest {column} is {largest:e}: make a column in a handier unit under [data.derive], so that its coefficient \
              is near one"

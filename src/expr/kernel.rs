@@ -226,4 +226,4 @@ fn fold<'a>(out: &mut [f64], sources: &[Source], get: &impl Fn(Source) -> &'a [f
     }
 }
 
-const _: () = assert!(BLOCK % LANES == 0);
+const _: () = assert!(BLOCK.is_multiple_of(LANES));

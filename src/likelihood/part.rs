@@ -87,12 +87,12 @@ fn products(pass: &Pass, sizes: &[usize], parameters: usize) -> Vec<(usize, usiz
 
 impl Part {
     /// Binds rows to a formula; `raw(column)` gives the values of a raw column for these rows.
-    pub(super) fn bind<'a>(
+    pub(super) fn bind(
         formula: &Formula,
         index: usize,
         rows: usize,
         raw: &dyn Fn(u32) -> Vec<f64>,
-        weights: Option<&'a [f64]>,
+        weights: Option<&[f64]>,
         map: Vec<usize>,
         predictors: Vec<Predictor>,
     ) -> Part {
@@ -217,6 +217,7 @@ impl Part {
     }
 
     /// Adds this part to value, gradient and symmetric matrix (lower triangle and upper alike).
+    #[allow(clippy::too_many_arguments, reason = "three results are added to, and one caller")]
     pub(super) fn finish(
         &self,
         which: Which,

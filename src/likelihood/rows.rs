@@ -413,8 +413,8 @@ fn cells(model: &Model, table: &Table, rows: Rows) -> Result<Rows, LikelihoodErr
         ));
     }
     let mut totals: HashMap<(u32, usize), f64> = HashMap::new();
-    for row in 0..table.rows {
-        *totals.entry((rows.level[row], codes[row])).or_default() += rows.weight(row);
+    for (row, &code) in codes.iter().enumerate() {
+        *totals.entry((rows.level[row], code)).or_default() += rows.weight(row);
     }
     let mut keys: Vec<(u32, usize)> = totals.keys().copied().collect();
     keys.sort_unstable();

@@ -293,7 +293,7 @@ fn mixture(shape: &Shape, parts: &[(Name, &'static Family)], level: usize, membe
         v.iter_mut().zip(&known[j]).for_each(|(v, k)| *v = k.unwrap_or(*v));
         v
     };
-    for j in 0..k {
+    for (j, part) in parts.iter().enumerate() {
         let (from, to) = (total * j as f64 / k as f64, total * (j + 1) as f64 / k as f64);
         let mut sum = 0.0;
         let weights: Vec<f64> = sorted
@@ -308,7 +308,7 @@ fn mixture(shape: &Shape, parts: &[(Name, &'static Family)], level: usize, membe
             m = everything;
         }
         m.variance = m.variance.max(1e-3 * everything.variance);
-        values.push(settle(j, (parts[j].1.start)(&m)));
+        values.push(settle(j, (part.1.start)(&m)));
     }
     let logs: Vec<Option<Scalars>> = parts.iter().map(|(_, f)| log_density(f)).collect();
     if logs.iter().all(Option::is_some) {

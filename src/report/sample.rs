@@ -133,7 +133,7 @@ pub(super) fn failed() -> Document {
     let block = &mut document.outcome.restricted;
     block.fit.certificate = Certificate {
         reason: Some("the likelihood does not change when depth and spread move together".into()),
-        flat: vec![Direction { weights: vec![(0, 0.7071), (1, -0.7071)], se: None, value: 1.5 }],
+        flat: vec![Direction { weights: vec![(0, 0.6), (1, -0.8)], se: None, value: 1.5 }],
         identified: vec![Direction { weights: vec![(0, 1.0), (1, 1.0)], se: Some(0.31), value: 2.79 }],
         curvature_min: Some(f64::NAN),
         ..certificate(Verdict::Flat)

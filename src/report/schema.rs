@@ -102,7 +102,7 @@ fn unexplained(value: &Value, place: &str, out: &mut Vec<String>) {
                 }
                 unexplained(item, &format!("{place}.{key}"), out);
             }
-            if map.contains_key("reasons") && map.keys().last().map(String::as_str) != Some("reasons") {
+            if map.contains_key("reasons") && map.keys().next_back().map(String::as_str) != Some("reasons") {
                 out.push(format!("{place}: reasons are not last"));
             }
         }
