@@ -68,10 +68,10 @@ pub struct Arguments {
 pub enum Command {
     /// Fit under the restrictions: estimates, multipliers, tests, certificate
     #[command(long_about = FIT, after_help = FIT_EXAMPLES)]
-    Fit(Fit),
+    Fit(Box<Fit>),
     /// Say in words what a study would fit, and look for the usual mistakes; fits nothing
     #[command(long_about = CHECK)]
-    Check(Check),
+    Check(Box<Check>),
     /// List the families of likelihoods, or describe one
     Families(Families),
     /// Write completions for a shell to standard output

@@ -67,7 +67,7 @@ impl Study {
         let bytes = std::fs::read(path).map_err(|why| StudyError::File { path: name.clone(), why })?;
         let folder = path.parent().map(Path::to_path_buf).unwrap_or_default();
         match std::str::from_utf8(&bytes) {
-            Ok(text) => Study::from_text(text, &name, folder, overlay),
+            Ok(text) => Study::from_text(text, &name, folder, overlay).map_err(|e| of_a_table(path, e)),
             Err(e) => {
                 let line = bytes[..e.valid_up_to()].iter().filter(|b| **b == b'\n').count() + 1;
                 Err(StudyError::Wrong(Shown {
@@ -100,6 +100,19 @@ impl Study {
     /// How many of the restrictions have this role.
     pub fn count(&self, role: crate::restriction::Role) -> usize {
         self.restrictions.iter().filter(|d| d.role == role).count()
+    }
+}
+
+/// A CSV file given as a study is told so.
+fn of_a_table(path: &Path, error: StudyError) -> StudyError {
+    let table =
+        path.extension().is_some_and(|e| ["csv", "tsv", "txt", "dat"].iter().any(|t| e.eq_ignore_ascii_case(t)));
+    match error {
+        StudyError::Wrong(shown) if table => {
+            let advice = format!("a study is a TOML file; data are given as --data {}", path.display());
+            StudyError::Wrong(Shown { advice: Some(advice), ..shown })
+        }
+        other => other,
     }
 }
 
@@ -150,7 +163,7 @@ fn known(root: &Table) -> Result<(), Fault> {
     })
 }
 
-/// Notes the place of every value. A component's `known.mean` is also `mean.known`, as the model speaks of it.
+/// Notes the place of every value. A component's `known.mean` is also `mean.known` and `mean`, as the model speaks of it.
 fn note(prefix: &str, table: &Table, places: &mut Places) {
     for entry in &table.0 {
         let place = if prefix.is_empty() { entry.key.clone() } else { format!("{prefix}.{}", entry.key) };
@@ -160,6 +173,7 @@ fn note(prefix: &str, table: &Table, places: &mut Places) {
         {
             for e in &inner.0 {
                 places.note(format!("{prefix}.{}.{}", e.key, entry.key), e.node.at);
+                places.note(format!("{prefix}.{}", e.key), e.at);
             }
         }
     }

@@ -74,6 +74,10 @@ pub fn model(table: &Table) -> Result<Model, Fault> {
         return Err(Fault::at(node.at, format!("log_density belongs to the family custom, not to {family}"))
             .advise("write family = \"custom\", or take log_density out"));
     }
+    if model.response == Response::None && family != "custom" {
+        return Err(Fault::of_all(format!("{family} needs a response, and the study names none"))
+            .advise("add response = \"COLUMN\" under [model], or --response COLUMN"));
+    }
     (model.family, model.per) = (family, per);
     Ok(model)
 }

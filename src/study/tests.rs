@@ -186,9 +186,13 @@ fn wrong_studies_say_where_and_what_to_do() {
         (format!("{normal}sd={{start=1}}\n[quantities]\nsd='1'\n"), vec!["a quantity and a parameter"]),
         (format!("{normal}[tested]\na=3\n"), vec!["line 7: a must be an equation"]),
         (format!("{normal}[tested]\na=''\n"), vec!["a is empty"]),
-        ("[data]\nfile='a'\ndecimal=','\n[model]\nfamily='normal'\n".into(), vec!["delimiter = \";\""]),
-        ("[data]\nfile='a'\n[data.category]\nk=['a','a']\n[model]\nfamily='normal'\n".into(), vec!["two levels of k"]),
-        ("[data]\nweight='w'\n[model]\nfamily='normal'\n".into(), vec!["no file"]),
+        ("[data]\nfile='a'\ndecimal=','\n[model]\nfamily='normal'\nresponse='y'\n".into(), vec!["delimiter = \";\""]),
+        (
+            "[data]\nfile='a'\n[data.category]\nk=['a','a']\n[model]\nfamily='normal'\nresponse='y'\n".into(),
+            vec!["two levels of k"],
+        ),
+        ("[data]\nweight='w'\n[model]\nfamily='normal'\nresponse='y'\n".into(), vec!["no file"]),
+        (format!("{data}[model]\nfamily='normal'\n"), vec!["normal needs a response", "--response"]),
         ("[data]\nfile='a'\n[model]\nfamily='norm".into(), vec!["line 4", "a text is not closed"]),
         (String::new(), vec!["the study is empty"]),
     ] {

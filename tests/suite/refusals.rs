@@ -163,6 +163,8 @@ fn studies_that_are_wrong() {
         refused(what, &run(ROWS, &text, &options), 2, &parts);
     }
     let folder = Folder::new();
+    folder.write("d.csv", ROWS);
+    refused("a table for a study", &folder.run(&["fit", "d.csv"]), 2, &["d.csv, line 1", "--data d.csv"]);
     refused("nothing to fit", &folder.run(&["fit"]), 2, &["--data", "--family"]);
     refused("no command", &folder.run(&[]), 2, &["fit", "check", "families"]);
     refused("an unknown command", &folder.run(&["fti"]), 2, &["fti"]);
