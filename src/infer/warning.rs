@@ -3,7 +3,7 @@
 use super::{Block, Tests};
 use crate::likelihood::{Information, LogLikelihood};
 use crate::restriction::{Restriction, Role, System};
-use crate::solve::Fit;
+use crate::solve::{Fit, Verdict};
 
 /// A warning with its stable code.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -150,11 +150,12 @@ pub(super) fn from_search(restricted: &Fit, unrestricted: Option<&Fit>) -> Vec<W
         ));
     }
     for (which, fit) in fits() {
-        if fit.certificate.maxima.len() > 1 {
+        // On a flat ridge every start ends elsewhere at the same height; that is no second maximum.
+        if fit.certificate.verdict == Verdict::StrictMaximum && fit.certificate.maxima.len() > 1 {
             out.push(Warning::new(
                 "several-maxima",
                 format!(
-                    "the {which} likelihood has at least {} maxima (l {} and next {}); the best is reported; make more \
+                    "the {which} likelihood has at least {} maxima (l {:.6} and next {:.6}); the best is reported; make more \
                      starts to see whether a better one exists",
                     fit.certificate.maxima.len(),
                     fit.certificate.maxima[0],

@@ -96,9 +96,44 @@ fn cells(e: &Estimate, decimals: Option<usize>, noise: f64) -> [String; 4] {
     }
     match decimals.or_else(|| three_digits(se).filter(|_| e.value.abs().max(low.abs()).max(high.abs()) < 1e7)) {
         Some(decimals) => {
-            let plain = |x: f64| format!("{x:.decimals$}");
+            let plain = |x: f64| plain(x, decimals);
             [plain(low), plain(e.value), plain(high), plain(se)]
         }
         None => [short(low, 6), short(e.value, 6), short(high, 6), short(se, 3)],
+    }
+}
+
+/// Fixed decimals, without the sign of a number that rounds to zero.
+fn plain(x: f64, decimals: usize) -> String {
+    let text = format!("{x:.decimals$}");
+    match text.strip_prefix('-') {
+        Some(rest) if rest.chars().all(|c| matches!(c, '0' | '.')) => rest.to_string(),
+        _ => text,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn line(value: f64, se: f64) -> Estimate {
+        let (lower, upper) = (Some(value - 2.0 * se), Some(value + 2.0 * se));
+        Estimate { name: "x".into(), value, se: Some(se), lower, upper, edge: None }
+    }
+
+    #[test]
+    fn lines_share_decimals_where_they_can() {
+        assert_eq!(shared_decimals(&[line(0.5, 0.0123), line(12.25, 0.5)]), Some(4));
+        assert_eq!(shared_decimals(&[line(1e6, 1e3), line(0.5, 1e-5)]), None);
+        assert_eq!(shared_decimals(&[line(0.5, 0.0)]), None);
+        assert_eq!(cells(&line(0.5, 0.0123), Some(4), 0.0), ["0.4754", "0.5000", "0.5246", "0.0123"]);
+        assert_eq!(cells(&line(3e8, 1e7), None, 0.0), ["2.8e8", "3e8", "3.2e8", "1e7"]);
+    }
+
+    #[test]
+    fn zeros_are_plain() {
+        assert_eq!(cells(&line(-1e-17, 0.5), Some(3), 0.0), ["-1.000", "0.000", "1.000", "0.500"]);
+        assert_eq!(cells(&line(-5e-28, 0.0), None, 1e-27)[1], "0");
+        assert_eq!(cells(&line(2.0, 0.0), None, 1e-27)[1], "2");
     }
 }

@@ -8,7 +8,7 @@ use crate::solve::{Direction, End, Verdict};
 use serde_json::{Map, Value};
 
 /// Wide enough for an estimate, with all its digits, to stand on one line.
-const WIDTH: usize = 200;
+const WIDTH: usize = 260;
 
 /// One document, laid out over several lines.
 pub fn render(document: &Document) -> String {

@@ -56,7 +56,7 @@ impl Object {
     }
 }
 
-/// JSON with what fits in `width` on one line and everything else a member a line.
+/// JSON with what fits in `width`, and any list of numbers, on one line, and everything else a member a line.
 pub(super) fn lay_out(value: &Value, width: usize) -> String {
     let mut out = String::new();
     write(value, width, 0, 0, &mut out);
@@ -71,7 +71,8 @@ fn write(value: &Value, width: usize, indent: usize, before: usize, out: &mut St
         Value::Object(map) if !map.is_empty() => map.len(),
         _ => 0,
     };
-    if members == 0 || (indent > 0 && indent + before + flat.len() < width) {
+    let numbers = value.as_array().is_some_and(|items| items.iter().all(Value::is_number));
+    if members == 0 || numbers || (indent > 0 && indent + before + flat.len() < width) {
         out.push_str(&flat);
         return;
     }

@@ -9,6 +9,9 @@ use crate::likelihood::Information;
 use crate::restriction::Role;
 use crate::solve::Verdict;
 
+/// Warnings about tests that are missing; the answer on the tests says them.
+const MISSING: [&str; 2] = ["test-not-available", "unrestricted-failed"];
+
 /// The whole text.
 pub fn render(document: &Document) -> String {
     let block = &document.outcome.restricted;
@@ -82,9 +85,10 @@ fn restrictions(block: &Block) -> String {
         let explain = "A pull is the slope of the log-likelihood in the right-hand side: raise that by a small d, and the \
                        log-likelihood rises by about d times the pull.";
         out.push_str(&wrap(explain, 2, false));
+        let alone = tested.len() == 1;
         for m in tested {
             out.push_str(&wrap(&format!("{}: {}", m.name, m.equation), 2, true));
-            out.push_str(&pull(m));
+            out.push_str(&pull(m, alone));
         }
     }
     if !held.is_empty() {
@@ -105,8 +109,8 @@ fn restrictions(block: &Block) -> String {
     out
 }
 
-/// The two lines under a tested restriction.
-fn pull(m: &Multiplier) -> String {
+/// The two lines under a tested restriction, which may be the only one.
+fn pull(m: &Multiplier, alone: bool) -> String {
     let Some(value) = m.value else {
         let reason = m.reason.as_deref().unwrap_or("its pull is not known");
         return wrap(&format!("no pull: {reason}"), 4, true);
@@ -132,11 +136,12 @@ fn pull(m: &Multiplier) -> String {
         _ => format!("the data want the left side {side}"),
     };
     if let Some(gap) = m.gap {
+        let free = if alone { "let go" } else { "with every tested restriction let go" };
         let size = short(gap.abs(), 4);
         second.push_str(&match gap {
-            g if g > 0.0 => format!("; with every tested restriction let go it would be {size} above the right side"),
-            g if g < 0.0 => format!("; with every tested restriction let go it would be {size} below the right side"),
-            _ => "; with every tested restriction let go both sides would be equal".to_string(),
+            g if g > 0.0 => format!("; {free}, it would be {size} above the right side"),
+            g if g < 0.0 => format!("; {free}, it would be {size} below the right side"),
+            _ => format!("; {free}, both sides would be equal"),
         });
     }
     wrap(&first, 4, true) + &wrap(&second, 4, true)
@@ -156,12 +161,19 @@ fn tests(outcome: &Outcome) -> String {
         );
         out.push_str(&wrap(&sentence, 2, false));
     }
+    let mut missing: Vec<(Vec<&str>, &str)> = Vec::new();
     for (name, test) in all {
-        let line = match test {
-            Ok(test) => format!("{name}: {}", statistic(test)),
-            Err(reason) => format!("{name}: none, {reason}"),
-        };
-        out.push_str(&wrap(&line, 2, true));
+        match test {
+            Ok(test) => out.push_str(&wrap(&format!("{name}: {}", statistic(test)), 2, true)),
+            Err(reason) => match missing.iter_mut().find(|(_, same)| same == reason) {
+                Some((names, _)) => names.push(name),
+                None => missing.push((vec![name], reason)),
+            },
+        }
+    }
+    for (names, reason) in missing {
+        let code = code_of(outcome, reason).map_or_else(String::new, |code| format!(" ({code})"));
+        out.push_str(&wrap(&format!("no {}: {reason}{code}", list(&names, 3)), 2, true));
     }
     let kind = match outcome.information {
         Information::Expected => "expected information (averaged over what might have been observed)",
@@ -171,6 +183,11 @@ fn tests(outcome: &Outcome) -> String {
     };
     out.push_str(&wrap(&format!("Standard errors, score and Wald tests use {kind}."), 2, false));
     out
+}
+
+/// The code of the warning that gives this reason for a missing test.
+fn code_of(outcome: &Outcome, reason: &str) -> Option<&'static str> {
+    outcome.warnings.iter().find(|w| MISSING.contains(&w.code) && w.message.contains(reason)).map(|w| w.code)
 }
 
 fn statistic(test: &Test) -> String {
@@ -230,14 +247,14 @@ fn certificate(block: &Block) -> String {
     }
     out.push_str(&wrap(&say.join(" "), 2, false));
     for note in &c.notes {
-        out.push_str(&wrap(note, 2, true));
+        out.push_str(&wrap(&sentence(note), 2, true));
     }
     out
 }
 
 fn cautions(outcome: &Outcome) -> String {
     let mut out = String::from("What should be kept in mind?\n");
-    for warning in &outcome.warnings {
+    for warning in outcome.warnings.iter().filter(|w| !MISSING.contains(&w.code)) {
         out.push_str(&wrap(&format!("{} ({})", sentence(&warning.message), warning.code), 2, true));
     }
     out.push_str(&wrap(CAUTION, 2, false));
