@@ -21,7 +21,8 @@ Exit status:
   2  the command line or the study is wrong
   3  the data are wrong
   4  no trustworthy restricted maximum, or a gate without a p
-  5  a file could not be read or written";
+  5  a file could not be read or written
+  130  interrupted";
 
 const FIT: &str = "\
 Fits the study's model to its data under all restrictions, maintained and tested. Prints the

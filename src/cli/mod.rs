@@ -5,6 +5,7 @@ mod check;
 mod columns;
 mod families;
 mod fit;
+mod interrupt;
 mod job;
 mod mistakes;
 mod output;
@@ -20,6 +21,7 @@ use status::{Status, Stop};
 
 /// Runs the program on the process's arguments.
 pub fn run() -> ExitCode {
+    interrupt::watch();
     let arguments = match Arguments::try_parse() {
         Ok(arguments) => arguments,
         Err(shown) => return told(&shown),

@@ -4,6 +4,7 @@ use std::fs;
 use std::io::{self, ErrorKind, Write};
 use std::path::{Path, PathBuf};
 
+use super::interrupt::writing;
 use super::status::Stop;
 
 /// Says something on standard error; nobody listening is no fault.
@@ -38,12 +39,14 @@ pub fn whole(path: &Path, text: &str) -> Result<(), Stop> {
         return fs::write(path, text).map_err(fail);
     }
     let beside = beside(path);
+    writing(Some(&beside));
     let done = fs::File::create(&beside)
         .and_then(|mut f| f.write_all(text.as_bytes()).and_then(|()| f.sync_all()))
         .and_then(|()| fs::rename(&beside, path));
     if done.is_err() {
         let _ = fs::remove_file(&beside);
     }
+    writing(None);
     done.map_err(fail)
 }
 

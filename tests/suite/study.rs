@@ -174,3 +174,27 @@ fn completions_name_the_commands_and_options() {
         }
     }
 }
+
+/// The program waits for its data on standard input, which stays open, when the interruption comes.
+#[cfg(unix)]
+#[test]
+fn an_interruption_has_its_own_status() {
+    use std::process::{Command, Stdio};
+    let mut child = Command::new(env!("CARGO_BIN_EXE_guyline"))
+        .args(["fit", "--data", "-", "--family", "normal", "--response", "y"])
+        .stdin(Stdio::piped())
+        .stdout(Stdio::piped())
+        .stderr(Stdio::piped())
+        .spawn()
+        .unwrap();
+    let pipe = child.stdin.take();
+    // Long enough to start on a busy machine; the handler is the first thing the program sets.
+    std::thread::sleep(std::time::Duration::from_secs(2));
+    let sent = Command::new("kill").args(["-INT", &child.id().to_string()]).status().unwrap();
+    assert!(sent.success());
+    let done = child.wait_with_output().unwrap();
+    drop(pipe);
+    assert_eq!(done.status.code(), Some(130));
+    assert!(done.stdout.is_empty());
+    assert_eq!(String::from_utf8_lossy(&done.stderr), "interrupted\n");
+}
