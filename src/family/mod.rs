@@ -1,6 +1,8 @@
 //! The library of likelihoods: each one room, described as data.
 
 pub mod binomial;
+#[cfg(test)]
+mod checks;
 pub mod exponential;
 pub mod link;
 pub mod listing;
