@@ -168,6 +168,24 @@ fn derivatives_agree_with_differences() {
 }
 
 #[test]
+fn tails_keep_their_digits() {
+    let mut g = Graph::new();
+    let mut s = Scope::new("name");
+    let x = g.parameter(0);
+    s.insert("x", x);
+    let l = build(&mut g, &parse_expression("normal_log_cdf(x)").unwrap(), &s).unwrap();
+    let first = g.derivative(l, Variable::Parameter(0));
+    let second = g.derivative(first, Variable::Parameter(0));
+    let got = Scalars::compile(&g, &[l, first, second]).evaluate(&[-1e5]);
+    // asymptotic series of the tail, exact to 1e-20 at z = 1e5: log(phi/z) + log(1 - z^-2 + ...), z + 1/z, -1 + z^-2
+    let z = 1e5_f64;
+    let want = [-z * z / 2.0 - z.ln() - 0.918_938_533_204_672_7 - 1e-10, z + 1.0 / z, -1.0 + 1e-10];
+    for (g, w) in got.iter().zip(want) {
+        assert!((g - w).abs() <= 4e-16 * w.abs(), "{got:?} {want:?}");
+    }
+}
+
+#[test]
 fn zero_times_log_zero_is_zero() {
     let mut g = Graph::new();
     g.set_parameter_sign(0, Sign::Nonnegative);

@@ -201,9 +201,15 @@ impl Graph {
                 let e = self.half_square(x, None);
                 self.scale(NORMAL_PEAK, e)
             }
-            Function::NormalLogCdf => {
-                let e = self.half_square(x, Some(id));
-                self.scale(NORMAL_PEAK, e)
+            Function::NormalLogCdf => self.call(Function::InverseMills, &[x]),
+            Function::InverseMills => self.call(Function::InverseMillsSlope, &[x]),
+            Function::InverseMillsSlope => {
+                // m' = -m (x + m), once more
+                let m = self.call(Function::InverseMills, &[x]);
+                let left = self.add(x, m);
+                let first = self.multiply(id, left);
+                let second = self.multiply(m, id);
+                self.sum(0.0, &[(first, -1.0), (m, -1.0), (second, -1.0)])
             }
             Function::NormalLogInterval => {
                 let e = self.half_square(x, Some(id));

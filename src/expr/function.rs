@@ -38,6 +38,10 @@ pub enum Function {
     Log1mexp,
     /// `normal_log_interval(a, b)` = log(Phi(b) - Phi(a)), a < b
     NormalLogInterval,
+    /// `inverse_mills(x)` = phi(x) / Phi(x), the derivative of `normal_log_cdf`
+    InverseMills,
+    /// `inverse_mills_slope(x)`, its derivative
+    InverseMillsSlope,
     /// `polygamma(m, x)`, m a whole number >= 1 (1: trigamma)
     Polygamma,
     /// `log_mix(w1, a1, w2, a2, ...)` = log(sum w_i exp(a_i)), weights >= 0
@@ -85,6 +89,14 @@ pub const TABLE: &[Entry] = &[
         2,
         "log of the standard normal probability between a and b",
     ),
+    Entry(
+        Function::InverseMills,
+        "inverse_mills",
+        1,
+        1,
+        "normal density over distribution function, accurate far in the tail",
+    ),
+    Entry(Function::InverseMillsSlope, "inverse_mills_slope", 1, 1, "derivative of inverse_mills"),
     Entry(Function::Polygamma, "polygamma", 2, 2, "derivative of digamma of the given order, (order, x)"),
     Entry(Function::LogMix, "log_mix", 2, usize::MAX, "log(w1 exp(a1) + w2 exp(a2) + ...), (w1, a1, w2, a2, ...)"),
 ];

@@ -239,7 +239,12 @@ impl Graph {
                 }
             }
             Node::Call(f, a) => match f {
-                Function::Exp | Function::Cosh | Function::Logistic | Function::NormalCdf | Function::Erfc => Positive,
+                Function::Exp
+                | Function::Cosh
+                | Function::Logistic
+                | Function::NormalCdf
+                | Function::Erfc
+                | Function::InverseMills => Positive,
                 Function::Abs => Nonnegative,
                 Function::Min | Function::Max => {
                     let signs = a.iter().map(|&i| self.sign(i));

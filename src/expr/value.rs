@@ -38,6 +38,8 @@ impl Function {
             Function::LogLogistic => special::log_logistic(a),
             Function::Log1mexp => special::log1mexp(a),
             Function::NormalLogInterval => special::normal_log_interval(a, x[1]),
+            Function::InverseMills => special::inverse_mills(a),
+            Function::InverseMillsSlope => special::inverse_mills_slope(a),
             Function::Polygamma => special::polygamma(a as u32, x[1]),
             Function::LogMix => {
                 let top = x.iter().skip(1).step_by(2).copied().fold(f64::NEG_INFINITY, f64::max);
