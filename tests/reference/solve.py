@@ -260,6 +260,8 @@ def answer(case):
     if case.get("unrestricted", True):
         free = c.maintained + c.held(case.get("edges_unrestricted", {}))
         u = c.solve(free, theta)
+        for at, e in enumerate(case.get("edges_unrestricted", {}).values()):
+            assert (u[1][len(c.maintained) + at] < 0) == (float(e) == 0), "the edge is not active in the unrestricted fit"
         lr = 2 * (u[2] - l)
         out["unrestricted"] = {"theta": {t.name: number(v) for t, v in zip(c.theta, u[0])}, "log_likelihood": number(u[2])}
         out["lr"] = {"chi_square": number(lr), "p": number(tail(lr, m))}

@@ -62,7 +62,7 @@ fn all_weights_zero() {
 
 #[test]
 fn ten_faults_at_once() {
-    let many = DATA.replace("0.2", "a").replace("0.9", "b").replace("1.4", "c");
+    let many = DATA.replace("1.5", "a").replace("1.0", "b").replace("4.1", "c");
     refused(&many, STUDY, &[], 3, &["line 2", "line 4", "line 7"]);
 }
 

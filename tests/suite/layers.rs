@@ -54,7 +54,7 @@ fn sources() -> Vec<(String, String)> {
     let tests = test_files(&paths);
     paths
         .iter()
-        .filter(|p| !tests.contains(p))
+        .filter(|p| !tests.iter().any(|t| p.starts_with(t)))
         .map(|p| {
             let text = std::fs::read_to_string(p).unwrap();
             let body = text.split("#[cfg(test)]\nmod tests {").next().unwrap();
@@ -64,7 +64,7 @@ fn sources() -> Vec<(String, String)> {
         .collect()
 }
 
-/// Files that hold unit tests only: declared as `#[cfg(test)] mod NAME;`.
+/// Files and folders that hold unit tests only: declared as `#[cfg(test)] mod NAME;`.
 fn test_files(paths: &[PathBuf]) -> Vec<PathBuf> {
     let mut out = Vec::new();
     for path in paths {
@@ -77,7 +77,7 @@ fn test_files(paths: &[PathBuf]) -> Vec<PathBuf> {
         for rest in text.split("#[cfg(test)]\nmod ").skip(1) {
             let name: String = rest.chars().take_while(|c| c.is_ascii_alphanumeric() || *c == '_').collect();
             if rest[name.len()..].starts_with(';') {
-                out.extend([home.join(format!("{name}.rs")), home.join(&name).join("mod.rs")]);
+                out.extend([home.join(format!("{name}.rs")), home.join(&name)]);
             }
         }
     }
