@@ -25,9 +25,10 @@ pub use run::run;
 pub use test::Test;
 pub use warning::Warning;
 
-use crate::likelihood::Information;
+/// Words of the floors below that a result is told in.
+pub use crate::{likelihood::Information, restriction::Role};
+
 use crate::math::Matrix;
-use crate::restriction::Role;
 use crate::solve::{End, Fit};
 
 /// One estimate.

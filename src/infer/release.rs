@@ -2,8 +2,7 @@
 
 use super::point::Point;
 use crate::likelihood::Information;
-use crate::math::Matrix;
-use nalgebra::Dyn;
+use crate::math::{Cholesky, Matrix};
 
 /// C, V and, for the robust form, M of the contract's section on information, over an independent set of tested rows.
 pub(super) struct Release {
@@ -18,9 +17,9 @@ pub(super) struct Release {
     /// M = H C J C H' (robust form), else V itself.
     pub m: Matrix,
     /// Cholesky factor of V.
-    pub v_factor: nalgebra::Cholesky<f64, Dyn>,
+    pub v_factor: Cholesky,
     /// Cholesky factor of M.
-    pub m_factor: nalgebra::Cholesky<f64, Dyn>,
+    pub m_factor: Cholesky,
 }
 
 impl Release {

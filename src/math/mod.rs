@@ -11,6 +11,8 @@
 pub type Matrix = nalgebra::DMatrix<f64>;
 /// A dense column vector of doubles.
 pub type Vector = nalgebra::DVector<f64>;
+/// The Cholesky factor of a positive definite matrix.
+pub type Cholesky = nalgebra::Cholesky<f64, nalgebra::Dyn>;
 
 pub mod error;
 pub mod linear;

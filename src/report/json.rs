@@ -2,8 +2,7 @@
 
 use super::Document;
 use super::object::{Object, lay_out};
-use crate::infer::{Block, Estimate, Multiplier, Outcome, Test};
-use crate::restriction::Role;
+use crate::infer::{Block, Estimate, Multiplier, Outcome, Role, Test};
 use crate::solve::{Direction, End, Verdict};
 use serde_json::{Map, Value};
 

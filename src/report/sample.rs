@@ -1,10 +1,8 @@
 //! Documents to render in tests: invented, not fitted.
 
 use super::{DataFacts, Document, ModelFacts, Named};
-use crate::infer::{Block, Estimate, Multiplier, Outcome, Test, Warning};
-use crate::likelihood::Information;
+use crate::infer::{Block, Estimate, Information, Multiplier, Outcome, Role, Test, Warning};
 use crate::math::{Matrix, Vector};
-use crate::restriction::Role;
 use crate::solve::{Certificate, Direction, Edge, End, Fit, Verdict};
 
 fn certificate(verdict: Verdict) -> Certificate {

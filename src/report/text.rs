@@ -4,9 +4,7 @@ use super::estimates;
 use super::number::{count, probability, short, tiny, trimmed};
 use super::words::{how_often, list, sentence, stance, wrap};
 use super::{CAUTION, Document, failure};
-use crate::infer::{Block, Multiplier, Outcome, Test};
-use crate::likelihood::Information;
-use crate::restriction::Role;
+use crate::infer::{Block, Information, Multiplier, Outcome, Role, Test};
 use crate::solve::Verdict;
 
 /// Warnings about tests that are missing; the answer on the tests says them.

@@ -1,5 +1,6 @@
 //! Orthonormal bases of the rows of a Jacobian and of the directions they leave free.
 
+use crate::math::linear::symmetric_eigen;
 use crate::math::{Matrix, Vector};
 
 /// Residual of a normalised row, below which it counts as dependent on those before it (contract: 1e-9 of the largest).
@@ -102,20 +103,8 @@ fn complement(y: &Matrix) -> Matrix {
 
 /// Eigenvalues (ascending) and vectors of a symmetric matrix; `None` where it has an entry that is not finite.
 pub(super) fn eigen(m: &Matrix) -> Option<(Vec<f64>, Matrix)> {
-    let n = m.nrows();
-    if n == 0 {
-        return Some((Vec::new(), Matrix::zeros(0, 0)));
-    }
-    if m.iter().any(|x| !x.is_finite()) {
-        return None;
-    }
-    let symmetric = (m + m.transpose()) * 0.5;
-    let e = nalgebra::SymmetricEigen::try_new(symmetric, f64::EPSILON, 10_000)?;
-    let mut order: Vec<usize> = (0..n).collect();
-    order.sort_by(|&a, &b| e.eigenvalues[a].total_cmp(&e.eigenvalues[b]));
-    let values = order.iter().map(|&i| e.eigenvalues[i]).collect();
-    let vectors: Vec<Vector> = order.iter().map(|&i| e.eigenvectors.column(i).into_owned()).collect();
-    Some((values, Matrix::from_columns(&vectors)))
+    let (values, vectors) = symmetric_eigen(m).ok()?;
+    Some((values.iter().copied().collect(), vectors))
 }
 
 #[cfg(test)]
