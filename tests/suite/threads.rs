@@ -31,7 +31,7 @@ fn the_demos() {
 fn many_rows() {
     let folder = Folder::new();
     let (mut state, mut data) = (5u64, String::from("y,x\n"));
-    for _ in 0..120_000 {
+    for _ in 0..50_000 {
         let mut next = || {
             state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
             (state >> 40) as f64 / (1u64 << 24) as f64
