@@ -8,6 +8,7 @@ fn check(name: &str, arguments: &[&str]) {
     let text = format!("$ guyline {}\n{}{}[status {}]\n", arguments.join(" "), answer.out, answer.err, answer.status);
     let path = root().join("tests/suite/snapshots").join(format!("{name}.txt"));
     if std::env::var("GUYLINE_SNAPSHOTS").is_ok_and(|v| v == "write") {
+        std::fs::create_dir_all(path.parent().unwrap()).unwrap();
         std::fs::write(&path, &text).unwrap();
     }
     let kept = std::fs::read_to_string(&path).unwrap_or_default();
