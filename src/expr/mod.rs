@@ -2,12 +2,14 @@
 
 #[cfg(test)]
 mod agreement;
+mod allocate;
 pub mod ast;
 mod blame;
 pub mod build;
 pub mod caret;
 mod climb;
 mod derive;
+mod emit;
 pub mod error;
 pub mod function;
 pub mod graph;
@@ -24,6 +26,7 @@ pub mod rows;
 pub mod scalars;
 mod sorts;
 mod token;
+mod units;
 mod value;
 mod vector;
 

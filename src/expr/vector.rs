@@ -211,3 +211,65 @@ pub(super) fn sum_log(a: &[f64]) -> f64 {
     }
     reduce(black_box(lanes)) + rest.iter().fold(0.0, |s, &x| s + libm::log(x))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::{exp_block, log_block, log1p_exp_block, logistic_block, sum_log};
+
+    /// Distance in units in the last place of the wanted value.
+    fn ulps(got: f64, want: f64) -> f64 {
+        if got == want || (got.is_nan() && want.is_nan()) {
+            return 0.0;
+        }
+        let unit = f64::from_bits(want.abs().to_bits() + 1) - want.abs();
+        (got - want).abs() / unit
+    }
+
+    fn worst(f: fn(&mut [f64], &[f64]), g: fn(f64) -> f64, points: &[f64]) -> (f64, f64) {
+        let mut out = vec![0.0; points.len()];
+        f(&mut out, points);
+        points
+            .iter()
+            .zip(&out)
+            .map(|(&x, &y)| (ulps(y, g(x)), x))
+            .fold((0.0, 0.0), |w, p| if p.0 > w.0 { p } else { w })
+    }
+
+    #[test]
+    fn blocks_agree_with_the_library() {
+        let points: Vec<f64> = (0..200_001).map(|i| -760.0 + 0.0076 * f64::from(i)).collect();
+        let near: Vec<f64> = (0..20_001).map(|i| 1e-4 * f64::from(i - 10_000)).collect();
+        let ends = [0.0, -0.0, f64::INFINITY, f64::NEG_INFINITY, f64::NAN, 709.0, 709.9, -708.0, -745.2, 1e-320];
+        for p in [&points[..], &near, &ends] {
+            // the library is itself within one unit of the exact value
+            let (w, x) = worst(exp_block, libm::exp, p);
+            assert!(w <= 2.0, "exp {x}: {w}");
+        }
+        let positive: Vec<f64> = points.iter().map(|&x| libm::exp(x * 0.9)).collect();
+        let about_one: Vec<f64> = near.iter().map(|&x| 1.0 + 0.9 * x).collect();
+        for p in [&positive[..], &about_one, &ends, &[-1.0, -1e-310]] {
+            let (w, x) = worst(log_block, libm::log, p);
+            assert!(w <= 2.0, "log {x}: {w}");
+        }
+        let log_logistic = |x: f64| x.min(0.0) - libm::log1p(libm::exp(-x.abs()));
+        for p in [&points[..], &near] {
+            let (w, x) = worst(log1p_exp_block, log_logistic, p);
+            assert!(w <= 3.0, "log_logistic {x}: {w}");
+        }
+        // 1 / (1 + exp(-x)) rounds three times
+        let inside: Vec<f64> = points.iter().copied().filter(|x| x.abs() < 700.0).collect();
+        let (w, x) = worst(logistic_block, |x| 1.0 / (1.0 + libm::exp(-x)), &inside);
+        assert!(w <= 3.0, "logistic {x}: {w}");
+    }
+
+    #[test]
+    fn the_sum_of_logarithms_is_the_sum() {
+        let a: Vec<f64> = (1..500).map(|i| libm::exp(f64::from(i * 37 % 211) - 100.0)).collect();
+        let want: f64 = a.iter().map(|&x| libm::log(x)).sum();
+        let size: f64 = a.iter().map(|&x| libm::log(x).abs()).sum();
+        // 500 roundings on either side
+        assert!((sum_log(&a) - want).abs() < 500.0 * 2.3e-16 * size / 100.0, "{} {want}", sum_log(&a));
+        assert_eq!(sum_log(&[1.0, 0.0]), f64::NEG_INFINITY);
+        assert!(sum_log(&[1.0, -2.0]).is_nan());
+    }
+}
