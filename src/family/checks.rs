@@ -103,13 +103,13 @@ fn expected_information_is_the_variance_of_the_scores() {
                     }
                 }
             }
-            for a in 0..n {
-                for b in 0..n {
+            for (a, row) in j.iter().enumerate() {
+                for (b, &found) in row.iter().enumerate() {
                     let (x, y) = (f.parameters[a].name, f.parameters[b].name);
                     let text = f.information.iter().find(|e| (e.0, e.1) == (x, y) || (e.1, e.0) == (x, y));
                     let want = text.map_or(0.0, |e| at(&compile(f, e.2, true), 0.0, 0.0, 0.0, &theta)[0]);
                     let size = 1.0 + want.abs();
-                    assert!((j[a][b] - want).abs() < 1e-8 * size, "{} {x} {y}: {} not {want}", f.name, j[a][b]);
+                    assert!((found - want).abs() < 1e-8 * size, "{} {x} {y}: {} not {want}", f.name, found);
                 }
             }
         }

@@ -33,9 +33,8 @@ const CRATES: &[(&str, &[&str])] = &[
 ];
 
 /// Files past 450 lines, each with the reason it is owed.
-const LONG: &[(&str, &str)] = &[
-    ("expr/graph.rs", "every way to make a node keeps the same normal form; apart they would drift"),
-];
+const LONG: &[(&str, &str)] =
+    &[("expr/graph.rs", "every way to make a node keeps the same normal form; apart they would drift")];
 
 fn files(folder: &Path, out: &mut Vec<PathBuf>) {
     for entry in std::fs::read_dir(folder).unwrap() {
