@@ -87,8 +87,9 @@ fn advice(verdict: Verdict) -> &'static str {
              the outcomes. Restrict the range of the parameter that runs away, or leave out what drives it there."
         }
         Verdict::Stopped => {
-            "The search gave up. Give starting values nearer to what you expect, make more starts with --starts, or \
-             rescale columns so that parameters are of ordinary size."
+            "If the reason above is the data or the restrictions, mend those. If the search gave up, give starting values \
+             nearer to what you expect, make more starts with --starts, or rescale columns so that parameters are of \
+             ordinary size."
         }
     }
 }

@@ -123,6 +123,27 @@ impl Judged {
     }
 }
 
+/// Next to a closed end that the restrictions lead to, and on which the data have probability zero.
+fn impossible(newton: &Newton, frame: &Frame) -> Option<String> {
+    let point = &newton.point;
+    let at = frame.bounds.iter().find(|b| {
+        let room = b.room(&point.theta);
+        let near = (1e-9 * newton.first_scale[b.parameter]).max(1e-12 * (b.at.abs() + point.theta.amax()));
+        if !b.closed || room == 0.0 || room > near {
+            return false;
+        }
+        let mut theta = point.theta.clone();
+        theta[b.parameter] = b.at;
+        let met = infeasibility(&frame.equations.sides(&theta)) <= FEASIBILITY;
+        met && frame.value(&frame.likelihood.coordinates().phi(&theta)) == f64::NEG_INFINITY
+    })?;
+    Some(format!(
+        "the restrictions lead to `{}` = {}, where the data have probability zero: they contradict the restrictions outright",
+        frame.name(at.parameter),
+        at.at
+    ))
+}
+
 fn judge(
     newton: &Newton,
     local: &Local,
@@ -133,6 +154,9 @@ fn judge(
     let frame = on.frame;
     if let Some(Ended::RanOff(j, end)) = newton.ended {
         return runs_off(newton, frame, j, end);
+    }
+    if let Some(reason) = impossible(newton, frame) {
+        return Judged::of(Verdict::Stopped, reason);
     }
     if let Some(&i) = regular.irregular.first()
         && local.infeasibility <= FEASIBILITY

@@ -14,6 +14,7 @@ mod nist;
 mod own_cases;
 mod readme;
 mod refusals;
+mod regression;
 mod reports;
 mod study;
 mod threads;
