@@ -110,6 +110,10 @@ pub trait LogLikelihood: Sync {
     fn small_counts(&self, _phi: &Vector) -> Option<(usize, usize)> {
         None
     }
+    /// The same likelihood over a part of its rows, on which starts can be tried cheaply; `None` where the rows are few.
+    fn thinned(&self) -> Option<Box<dyn LogLikelihood>> {
+        None
+    }
     /// Whether a kink (a tie of abs, min, max) lies at this point.
     fn kink(&self, _phi: &Vector) -> bool {
         false

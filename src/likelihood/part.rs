@@ -124,6 +124,46 @@ impl Part {
         Part { formula: index, store, fixed, map, predictors, kept: OnceLock::new() }
     }
 
+    /// How many rows.
+    pub(super) fn rows_count(&self) -> usize {
+        self.store.rows
+    }
+
+    /// The part with one row kept of each `step`, at a place in its stretch that no period of the data can follow. Fixed sums are
+    /// scaled, not taken anew.
+    pub(super) fn thinned(&self, step: usize) -> Part {
+        let kept: Vec<usize> = (0..self.store.rows / step)
+            .map(|i| {
+                let mixed = (i as u64).wrapping_mul(0x9e37_79b9_7f4a_7c15);
+                i * step + ((mixed >> 32) as usize) % step
+            })
+            .collect();
+        let take = |c: &Vec<Block>| blocks(kept.iter().map(|&i| c[i / BLOCK].0[i % BLOCK]));
+        let weight = |w: &Option<Vec<Block>>| w.as_ref().map(take);
+        let store = Store {
+            columns: self.store.columns.iter().map(take).collect(),
+            weights: weight(&self.store.weights),
+            rows: kept.len(),
+        };
+        let ratio = kept.len() as f64 / self.store.rows as f64;
+        Part {
+            formula: self.formula,
+            store,
+            fixed: self.fixed.iter().map(|x| ratio * x).collect(),
+            map: self.map.clone(),
+            predictors: self
+                .predictors
+                .iter()
+                .map(|p| Predictor {
+                    columns: p.columns.iter().map(take).collect(),
+                    offset: weight(&p.offset),
+                    at: p.at.clone(),
+                })
+                .collect(),
+            kept: OnceLock::new(),
+        }
+    }
+
     fn sizes(&self) -> Vec<usize> {
         self.predictors.iter().map(|p| p.at.len()).collect()
     }

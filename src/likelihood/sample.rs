@@ -32,12 +32,12 @@ pub struct Sample {
 }
 
 /// What a mixture needs for its own dangers: collapse and exchange of components.
-#[derive(Debug, Default)]
+#[derive(Debug, Clone, Default)]
 pub(super) struct Mixture {
     levels: Vec<(Vec<Component>, f64)>,
 }
 
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 struct Component {
     name: String,
     family: &'static str,
@@ -45,6 +45,11 @@ struct Component {
     own: Vec<Bound>,
     spread: Option<Bound>,
 }
+
+/// Rows that starts are tried on; a likelihood is thinned when it has several times as many.
+const THIN_ROWS: usize = 16_384;
+/// Fewest rows that a part may keep.
+const THIN_PART: usize = 500;
 
 /// Spread below which a component counts as collapsed, as a part of the response's.
 const COLLAPSED_SPREAD: f64 = 1e-3;
@@ -174,6 +179,30 @@ impl LogLikelihood for Sample {
 
     fn concave(&self) -> bool {
         self.concave
+    }
+
+    fn thinned(&self) -> Option<Box<dyn LogLikelihood>> {
+        let rows: usize = self.parts.iter().map(Part::rows_count).sum();
+        let step = rows / THIN_ROWS;
+        if step < 4 || self.parts.iter().any(|p| p.rows_count() / step < THIN_PART) {
+            return None;
+        }
+        Some(Box::new(Sample {
+            parameters: self.parameters.clone(),
+            known: self.known.clone(),
+            coordinates: self.coordinates.clone(),
+            formulas: self.formulas.clone(),
+            parts: self.parts.iter().map(|p| p.thinned(step)).collect(),
+            weight_total: self.weight_total / step as f64,
+            start: self.start.clone(),
+            concave: self.concave,
+            equations: self.equations.clone(),
+            mixture: self.mixture.clone(),
+            expected: self.expected,
+            collapsed_rows: self.collapsed_rows,
+            cells: self.cells.clone(),
+            bins: self.bins.clone(),
+        }))
     }
 
     fn collapsed(&self, phi: &Vector) -> Option<String> {

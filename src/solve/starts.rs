@@ -4,7 +4,7 @@ use super::equations::Equations;
 use super::error::SolveError;
 use super::frame::Frame;
 use super::local::scale;
-use super::newton::{Ended, Newton};
+use super::newton::{Ended, Known, Newton};
 use super::run::{Outcome, run};
 use super::second::second_opinion;
 use super::verdict::{fit, nowhere};
@@ -58,9 +58,15 @@ pub(super) fn maximise(
         return Err(SolveError::StartLength { found: wrong.len(), expected: frame.n });
     }
     let Some(first) = starts.first() else { return Err(SolveError::NoStart) };
+    let first = first.clone();
+    let thin = if count > 1 { likelihood.thinned() } else { None };
+    let fates = match &thin {
+        Some(thin) => advance(thin.as_ref(), equations, search, &mut starts[..count])?,
+        None => Vec::new(),
+    };
     let mut findings = Findings {
         frame: &frame,
-        relabellings: harmless(&frame, first),
+        relabellings: harmless(&frame, &first),
         answers: Vec::new(),
         others: Vec::new(),
         missed: None,
@@ -68,39 +74,120 @@ pub(super) fn maximise(
         collapsed: 0,
         starts: starts.len(),
     };
-    for start in &starts {
+    let mut landed: Vec<Option<usize>> = Vec::new();
+    for (at, start) in starts.iter().enumerate() {
+        match fates.get(at) {
+            Some(Fate::Nowhere) => {
+                landed.push(None);
+                continue;
+            }
+            // what ended at one point of the thinned likelihood is one start of the whole one
+            Some(&Fate::Twin(twin)) if let Some(answer) = landed[twin] => {
+                findings.reached(answer);
+                landed.push(Some(answer));
+                continue;
+            }
+            _ => {}
+        }
         let known = findings.answers.iter().map(|a| (a.newton.point.phi.clone(), a.newton.local.d.clone())).collect();
         let outcome = run(&frame, start, search.iterations, known)?;
-        findings.sort_in(outcome);
+        landed.push(findings.sort_in(outcome));
     }
     let mut fit = findings.best();
     if search.second_opinion && fit.certificate.verdict == Verdict::StrictMaximum {
         ask(&frame, &mut fit);
     }
     fit.certificate.passes = frame.passes();
+    if thin.is_some() {
+        fit.certificate.notes.push("starts were led over a part of the rows first, then over all".into());
+    }
     Ok(fit)
 }
 
+/// What became of a start on a thinned likelihood.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Fate {
+    /// It goes on over all rows.
+    Goes,
+    /// It ended where an earlier one did.
+    Twin(usize),
+    /// It wandered without end while others arrived: all rows would not mend that.
+    Nowhere,
+}
+
+/// Leads starts to where they end on a thinned likelihood, as points to start from on the whole one.
+fn advance(
+    thin: &dyn LogLikelihood,
+    equations: &dyn Equations,
+    search: &Search,
+    starts: &mut [Vector],
+) -> Result<Vec<Fate>, SolveError> {
+    let frame = Frame::new(thin, equations);
+    let mut known: Known = Vec::new();
+    // for each answer: the start that found it
+    let mut finder: Vec<usize> = Vec::new();
+    let mut fates = vec![Fate::Goes; starts.len()];
+    for at in 0..starts.len() {
+        let Outcome::Ran(newton) = run(&frame, &starts[at], search.iterations, known.clone())? else { continue };
+        match newton.ended {
+            Some(Ended::Known(k)) => {
+                fates[at] = Fate::Twin(finder[k]);
+                starts[at] = starts[finder[k]].clone();
+            }
+            Some(Ended::Found) if !newton.is_saddle() => {
+                let scale = &newton.local.d;
+                let same =
+                    known.iter().position(|(phi, _)| (phi - &newton.point.phi).component_div(scale).amax() < SAME);
+                match same {
+                    Some(k) => {
+                        fates[at] = Fate::Twin(finder[k]);
+                        starts[at] = starts[finder[k]].clone();
+                    }
+                    None => {
+                        known.push((newton.point.phi.clone(), newton.local.d.clone()));
+                        finder.push(at);
+                        starts[at] = newton.point.theta.clone();
+                    }
+                }
+            }
+            Some(Ended::Limit | Ended::Stuck) => fates[at] = Fate::Nowhere,
+            // what runs off or cannot begin has its say over all rows, from the start itself
+            _ => {}
+        }
+    }
+    if known.is_empty() {
+        fates.fill(Fate::Goes);
+    }
+    Ok(fates)
+}
+
 impl<'a> Findings<'a> {
-    fn sort_in(&mut self, outcome: Outcome<'a>) {
+    /// One more start that reached an answer.
+    fn reached(&mut self, answer: usize) {
+        self.answers[answer].reached += 1;
+        self.collapsed += usize::from(self.answers[answer].collapsed);
+    }
+
+    /// Enters what became of a start; the answer it reached.
+    fn sort_in(&mut self, outcome: Outcome<'a>) -> Option<usize> {
         let newton = match outcome {
             Outcome::Ran(newton) => newton,
             Outcome::Infeasible { phi, missed } => {
                 if self.missed.as_ref().is_none_or(|m| missed < m.1) {
                     self.missed = Some((phi, missed));
                 }
-                return;
+                return None;
             }
             Outcome::Undefined(phi) => {
                 self.undefined.get_or_insert(phi);
-                return;
+                return None;
             }
         };
         let collapsed = self.frame.likelihood.collapsed(&newton.point.phi).is_some();
         match newton.ended {
             Some(Ended::Known(k)) => {
-                self.answers[k].reached += 1;
-                self.collapsed += usize::from(self.answers[k].collapsed);
+                self.reached(k);
+                Some(k)
             }
             Some(Ended::Found) if !newton.is_saddle() => {
                 self.collapsed += usize::from(collapsed);
@@ -110,12 +197,22 @@ impl<'a> Findings<'a> {
                         if newton.local.error() < self.answers[k].newton.local.error() {
                             self.answers[k].newton = newton;
                         }
+                        Some(k)
                     }
-                    None => self.answers.push(Answer { newton, reached: 1, collapsed }),
+                    None => {
+                        self.answers.push(Answer { newton, reached: 1, collapsed });
+                        Some(self.answers.len() - 1)
+                    }
                 }
             }
-            _ if collapsed => self.collapsed += 1,
-            _ => self.others.push(*newton),
+            _ if collapsed => {
+                self.collapsed += 1;
+                None
+            }
+            _ => {
+                self.others.push(*newton);
+                None
+            }
         }
     }
 

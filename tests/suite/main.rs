@@ -10,6 +10,7 @@ mod bad_input;
 mod datasets;
 mod equivalence;
 mod layers;
+mod many_rows;
 mod nist;
 mod own_cases;
 mod readme;
