@@ -201,12 +201,10 @@ impl Part {
             program.block(&mut registers, &self.store, block, &scalars, gathered);
             let mut place = places.iter().map(|&(at, len)| (at - program.gathers(), len));
             for (v, slot) in pass.first.iter().enumerate() {
-                if let (&Slot::Row(k), Some((at, len))) =
-                    (slot, if matches!(slot, Slot::Row(_)) { place.next() } else { None })
-                {
-                    let h = program.row(k, &registers, &self.store, block);
-                    gram::cross(&mut design[at..at + len], &self.predictors[v - p].columns, block, h);
-                }
+                let Slot::Row(k) = *slot else { continue };
+                let Some((at, len)) = place.next() else { continue };
+                let h = program.row(k, &registers, &self.store, block);
+                gram::cross(&mut design[at..at + len], &self.predictors[v - p].columns, block, h);
             }
             for &(u, v, slot) in &pass.second {
                 let Slot::Row(k) = slot else { continue };

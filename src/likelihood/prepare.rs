@@ -140,7 +140,7 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         offsets: &designs.offsets,
         coordinates: &coordinates,
     };
-    let start = start::theta(&shape, &numbering.parameters, &numbering.starts)?;
+    let start = start::theta(&shape, &numbering.parameters, &numbering.starts);
     let mixture = mixture(&shape, levels);
     let all_kinds_exact = rows.kinds.iter().all(|&k| k == RowKind::Exact);
     let concave = match &statement.body {

@@ -5,7 +5,7 @@ use super::model::Model;
 use super::plan::{Bound, LocalPlan, PredictorPlan};
 use super::rows::{RowKind, Rows};
 use super::statement::{Body, Statement};
-use super::{Coordinates, LikelihoodError, Parameter};
+use super::{Coordinates, Parameter};
 use crate::expr::{Graph, Name, Scalars, Scope, build, parse_expression};
 use crate::family::{Family, Link, Moments};
 use crate::math::linear::positive_definite_inverse;
@@ -31,14 +31,7 @@ const EM_ROWS: usize = 2_000;
 const EM_STEPS: usize = 15;
 
 /// The first starting point; what the study states stands as stated.
-///
-/// # Errors
-/// None today; kept for families whose start can fail.
-pub(super) fn theta(
-    shape: &Shape,
-    parameters: &[Parameter],
-    stated: &[Option<f64>],
-) -> Result<Vector, LikelihoodError> {
+pub(super) fn theta(shape: &Shape, parameters: &[Parameter], stated: &[Option<f64>]) -> Vector {
     let mut phi = Vector::zeros(parameters.len());
     for (level, bound) in shape.bound_locals.iter().enumerate() {
         let members = &shape.rows.members[level];
@@ -70,7 +63,7 @@ pub(super) fn theta(
     for (i, p) in parameters.iter().enumerate() {
         theta[i] = inside(theta[i], p);
     }
-    Ok(theta)
+    theta
 }
 
 fn set(phi: &mut Vector, bound: Bound, value: f64) {

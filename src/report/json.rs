@@ -71,7 +71,7 @@ fn tests(outcome: &Outcome) -> Value {
         .maybe("score", outcome.score.as_ref().map(score).map_err(String::as_str))
         .maybe("lr", outcome.lr.as_ref().map(|t| plain(t).done()).map_err(String::as_str))
         .maybe("wald", outcome.wald.as_ref().map(|t| plain(t).done()).map_err(String::as_str))
-        .maybe("bootstrap", Err::<Value, _>("not asked for"))
+        .maybe("bootstrap", Err::<Value, _>("this version makes none"))
         .done()
 }
 
