@@ -137,31 +137,31 @@ fn compare(graph: &mut Graph, relation: Relation, a: &Ast, b: &Ast, scope: &Scop
         let (a, b) = (build(graph, a, scope)?, build(graph, b, scope)?);
         return Ok(graph.compare(relation, a, b));
     };
-    let Kind::Text(label) = &other.kind else {
-        return Err(ExprError {
-            span: other.span,
-            fault: Fault::Sort("a category can be compared with a label only".into()),
-            advice: Some("write the label in single quotes, as in kiln = 'north'".into()),
-        });
-    };
-    if !matches!(relation, Relation::Equal | Relation::Unequal) {
-        return Err(ExprError {
-            span: other.span,
-            fault: Fault::Sort("labels have no order here".into()),
-            advice: Some("use = or !=".into()),
-        });
-    }
-    let code = label_code(label, levels, other.span)?;
+    let code = label_code(relation, other, levels)?;
     let code = graph.constant(code as f64);
     Ok(graph.compare(relation, codes, code))
 }
 
-/// The code of a label among the levels of a category.
-pub(super) fn label_code(label: &str, levels: &[String], span: Span) -> Result<usize, ExprError> {
-    levels.iter().position(|l| l == label).ok_or_else(|| ExprError {
-        span,
-        fault: Fault::Unknown("level", label.to_string()),
-        advice: Some(format!("the levels are {}", levels.iter().take(12).cloned().collect::<Vec<_>>().join(", "))),
+/// The code of the label that a category is compared with.
+///
+/// # Errors
+/// No label, a relation that needs an order, a label that is no level.
+pub(super) fn label_code(relation: Relation, other: &Ast, levels: &[String]) -> Result<usize, ExprError> {
+    let fault = |fault: Fault, advice: String| ExprError { span: other.span, fault, advice: Some(advice) };
+    let Kind::Text(label) = &other.kind else {
+        return Err(fault(
+            Fault::Sort("a category can be compared with a label only".into()),
+            "write the label in single quotes, as in kiln = 'north'".into(),
+        ));
+    };
+    if !matches!(relation, Relation::Equal | Relation::Unequal) {
+        return Err(fault(Fault::Sort("labels have no order here".into()), "use = or !=".into()));
+    }
+    levels.iter().position(|l| l == label).ok_or_else(|| {
+        fault(
+            Fault::Unknown("level", label.to_string()),
+            format!("the levels are {}", levels.iter().take(12).cloned().collect::<Vec<_>>().join(", ")),
+        )
     })
 }
 

@@ -78,7 +78,7 @@ pub fn evaluate<'a>(
             };
             Ok((0..rows).map(choose).collect())
         }
-        Kind::Compare(relation, a, b) => compare(ast, *relation, a, b, columns, rows),
+        Kind::Compare(relation, a, b) => compare(*relation, a, b, columns, rows),
         Kind::And(a, b) => pair(a, b, &both),
         Kind::Or(a, b) => pair(a, b, &|x, y| 1.0 - both(1.0 - x, 1.0 - y)),
         Kind::Not(a) => Ok(go(a)?.into_iter().map(|x| 1.0 - x).collect()),
@@ -91,7 +91,6 @@ fn both(x: f64, y: f64) -> f64 {
 }
 
 fn compare<'a>(
-    ast: &Ast,
     relation: Relation,
     a: &Ast,
     b: &Ast,
@@ -115,21 +114,7 @@ fn compare<'a>(
             return Ok(x.iter().zip(&y).map(|(&x, &y)| verdict(x, y)).collect());
         }
     };
-    let Kind::Text(label) = &other.kind else {
-        return Err(ExprError {
-            span: other.span,
-            fault: Fault::Sort("a category can be compared with a label only".into()),
-            advice: Some("write the label in single quotes, as in kiln = 'north'".into()),
-        });
-    };
-    if !matches!(relation, Relation::Equal | Relation::Unequal) {
-        return Err(ExprError {
-            span: ast.span,
-            fault: Fault::Sort("labels have no order here".into()),
-            advice: Some("use = or !=".into()),
-        });
-    }
-    let code = label_code(label, levels, other.span)? as u32;
+    let code = label_code(relation, other, levels)? as u32;
     Ok(codes.iter().map(|&c| truth((c == code) == (relation == Relation::Equal))).collect())
 }
 
