@@ -41,14 +41,7 @@ impl Function {
             Function::InverseMills => special::inverse_mills(a),
             Function::InverseMillsSlope => special::inverse_mills_slope(a),
             Function::Polygamma => special::polygamma(a as u32, x[1]),
-            Function::LogMix => {
-                let top = x.iter().skip(1).step_by(2).copied().fold(f64::NEG_INFINITY, f64::max);
-                if top == f64::NEG_INFINITY {
-                    return top;
-                }
-                let total: f64 = x.chunks_exact(2).map(|p| p[0] * libm::exp(p[1] - top)).sum();
-                top + libm::log(total)
-            }
+            Function::LogMix => special::log_mix(x),
         }
     }
 }

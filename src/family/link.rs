@@ -41,10 +41,10 @@ impl Link {
     pub fn forward(self, value: f64) -> f64 {
         match self {
             Link::Identity => value,
-            Link::Log => value.ln(),
-            Link::Logit => (value / (1.0 - value)).ln(),
+            Link::Log => libm::log(value),
+            Link::Logit => special::logit(value),
             Link::Probit => special::normal_quantile(value),
-            Link::ComplementaryLogLog => (-(-value).ln_1p()).ln(),
+            Link::ComplementaryLogLog => libm::log(-libm::log1p(-value)),
         }
     }
 

@@ -182,7 +182,6 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         equations,
         mixture,
         expected: all_kinds_exact,
-        collapsed_rows: rows.collapsed,
         cells: match &statement.body {
             Body::Categorical => bound_locals.iter().enumerate().map(|(l, b)| (level_weight(l), b.clone())).collect(),
             _ => Vec::new(),

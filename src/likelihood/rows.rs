@@ -39,8 +39,6 @@ pub(super) struct Rows {
     pub(super) columns: Vec<(String, Vec<f64>)>,
     /// Labels of a categorical response, one cell a name.
     pub(super) cells: Vec<Name>,
-    /// Whether the rows are cells, not the table's rows.
-    pub(super) collapsed: bool,
 }
 
 /// Keys of the columns that are no column of the table (those are keyed by their name after a space).
@@ -425,7 +423,6 @@ fn cells(model: &Model, table: &Table, rows: Rows) -> Result<Rows, LikelihoodErr
         levels: rows.levels,
         weights: Some(keys.iter().map(|k| totals[k]).collect()),
         cells,
-        collapsed: true,
         ..Rows::default()
     };
     for cell in 0..out.cells.len() {

@@ -24,7 +24,6 @@ pub struct Sample {
     pub(super) equations: Vec<String>,
     pub(super) mixture: Option<Mixture>,
     pub(super) expected: bool,
-    pub(super) collapsed_rows: bool,
     /// Cells of labels: for each level of `per` its total weight and what each share is bound to.
     pub(super) cells: Vec<(f64, Vec<Bound>)>,
     /// For each part: the total weight of its level of `per` if its rows are bins.
@@ -85,11 +84,6 @@ impl Sample {
     /// The starting point computed from the data and the study.
     pub fn start(&self) -> &Vector {
         &self.start
-    }
-
-    /// Whether rows of labels were counted into cells.
-    pub fn is_counted(&self) -> bool {
-        self.collapsed_rows
     }
 
     /// Whether the family has expected information for these rows.
@@ -199,7 +193,6 @@ impl LogLikelihood for Sample {
             equations: self.equations.clone(),
             mixture: self.mixture.clone(),
             expected: self.expected,
-            collapsed_rows: self.collapsed_rows,
             cells: self.cells.clone(),
             bins: self.bins.clone(),
         }))

@@ -371,13 +371,13 @@ pub(super) fn spread(first: &Vector, parameters: &[Parameter], count: usize, see
     // powers of the positive root of x^(n+1) = x + 1
     let mut g: f64 = 2.0;
     for _ in 0..60 {
-        g = (1.0 + g).powf(1.0 / (n as f64 + 1.0));
+        g = libm::pow(1.0 + g, 1.0 / (n as f64 + 1.0));
     }
     let shift = (seed.wrapping_mul(0x9e37_79b9_7f4a_7c15) >> 11) as f64 / (1u64 << 53) as f64;
     for k in 1..count {
         let mut x = first.clone();
         for (i, p) in parameters.iter().enumerate() {
-            let u = (0.5 + shift + k as f64 * g.powi(-(i as i32 + 1))).fract();
+            let u = (0.5 + shift + k as f64 * libm::pow(g, -(i as f64 + 1.0))).fract();
             let u = u.clamp(1e-6, 1.0 - 1e-6);
             let z = special::normal_quantile(u);
             let r = &p.range;

@@ -98,7 +98,7 @@ impl<'a> Test<'a> {
         if !value.is_finite() || !self.filter.admits(violation, value + rounding) {
             return Trial::Refused;
         }
-        let promising = self.slope > 0.0 && length * self.slope.powf(2.3) > self.violation.powf(1.1);
+        let promising = self.slope > 0.0 && length * libm::pow(self.slope, 2.3) > libm::pow(self.violation, 1.1);
         if promising {
             let enough = value + rounding >= self.value + ARMIJO * length * self.slope;
             // A gain bought with a large violation is left to the correction step.

@@ -1,11 +1,10 @@
-//! Dense linear algebra: rank and null space, inertia, definite solves, and the orthogonalisation of a design.
+//! Dense linear algebra: rank and null space, definite solves, and the orthogonalisation of a design.
 
 mod condition;
 mod definite;
 mod dot;
 mod eigen;
 mod householder;
-mod kkt;
 mod null_space;
 mod orthogonal;
 mod svd;
@@ -13,7 +12,6 @@ mod svd;
 pub use condition::{centred_condition, scaled_condition};
 pub use definite::{positive_definite_inverse, quadratic_form_inverse};
 pub use eigen::symmetric_eigen;
-pub use kkt::{Inertia, Kkt};
 pub use null_space::{dependent_rows, null_space};
 pub use orthogonal::{Orthogonal, orthogonalise};
 pub use svd::{least_squares, singular_values, svd};
