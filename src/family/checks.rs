@@ -1,6 +1,6 @@
 //! Tests by a loop over the table of families: mass, information, intervals, starting values.
 
-use super::{FAMILIES, Family, Moments, Support};
+use super::{FAMILIES, Family, Information, Moments, Support};
 use crate::expr::{Graph, Scalars, Scope, Variable, build, parse_expression};
 
 /// Row parameters at which each family is looked at; any point inside the ranges would do.
@@ -22,12 +22,12 @@ const EXPOSURE: f64 = 1.5;
 fn compile(f: &Family, text: &str, first_only: bool) -> Scalars {
     let mut g = Graph::new();
     let mut s = Scope::new("name");
-    for (i, name) in ["y", "lower", "upper"].into_iter().enumerate() {
+    for (i, name) in ["y", "lower", "upper", "at"].into_iter().enumerate() {
         let id = g.parameter(i as u32);
         s.insert(name, id);
     }
     for (i, p) in f.parameters.iter().enumerate() {
-        let id = g.parameter(3 + i as u32);
+        let id = g.parameter(4 + i as u32);
         s.insert(p.name, id);
     }
     let (exposure, trials) = (g.constant(EXPOSURE), g.constant(TRIALS));
@@ -36,13 +36,13 @@ fn compile(f: &Family, text: &str, first_only: bool) -> Scalars {
     let id = build(&mut g, &parse_expression(text).unwrap(), &s).unwrap();
     let mut out = vec![id];
     if !first_only {
-        out.extend((0..f.parameters.len()).map(|i| g.derivative(id, Variable::Parameter(3 + i as u32))));
+        out.extend((0..f.parameters.len()).map(|i| g.derivative(id, Variable::Parameter(4 + i as u32))));
     }
     Scalars::compile(&g, &out)
 }
 
 fn at(s: &Scalars, y: f64, lower: f64, upper: f64, theta: &[f64]) -> Vec<f64> {
-    let mut all = vec![y, lower, upper];
+    let mut all = vec![y, lower, upper, y];
     all.extend(theta);
     s.evaluate(&all)
 }
@@ -50,9 +50,9 @@ fn at(s: &Scalars, y: f64, lower: f64, upper: f64, theta: &[f64]) -> Vec<f64> {
 /// Points and weights that carry all of the family's mass worth a double: a sum for counts, Simpson's rule otherwise.
 fn support(f: &Family) -> Vec<(f64, f64)> {
     match f.support {
-        Support::Count => (0..200).map(|k| (f64::from(k), 1.0)).collect(),
+        Support::Count | Support::CountFromOne => (0..200).map(|k| (f64::from(k), 1.0)).collect(),
         Support::CountOfTrials => (0..=TRIALS as i32).map(|k| (f64::from(k), 1.0)).collect(),
-        Support::Real | Support::Nonnegative => {
+        _ => {
             let (a, b) = if f.support == Support::Real { (-60.0, 60.0) } else { (0.0, 120.0) };
             simpson(a, b)
         }
@@ -106,7 +106,8 @@ fn expected_information_is_the_variance_of_the_scores() {
             for (a, row) in j.iter().enumerate() {
                 for (b, &found) in row.iter().enumerate() {
                     let (x, y) = (f.parameters[a].name, f.parameters[b].name);
-                    let text = f.information.iter().find(|e| (e.0, e.1) == (x, y) || (e.1, e.0) == (x, y));
+                    let Information::Closed(list) = f.information else { continue };
+                    let text = list.iter().find(|e| (e.0, e.1) == (x, y) || (e.1, e.0) == (x, y));
                     let want = text.map_or(0.0, |e| at(&compile(f, e.2, true), 0.0, 0.0, 0.0, &theta)[0]);
                     let size = 1.0 + want.abs();
                     assert!((found - want).abs() < 1e-8 * size, "{} {x} {y}: {} not {want}", f.name, found);
@@ -119,17 +120,17 @@ fn expected_information_is_the_variance_of_the_scores() {
 #[test]
 fn intervals_have_the_probability_of_the_density() {
     for f in FAMILIES {
-        let Some(c) = f.censored else { continue };
+        let Some(d) = f.distribution else { continue };
         let log = compile(f, f.log_density, true);
-        let (above, below, between) =
-            (compile(f, c.above, true), compile(f, c.below, true), compile(f, c.between, true));
+        let (above, below) = (compile(f, d.above, true), compile(f, d.below, true));
+        let Some(between) = d.between.map(|text| compile(f, text, true)) else { continue };
         for theta in points(f) {
             let (lower, upper) = (0.4, 1.7);
             let p = at(&between, 0.0, lower, upper, &theta)[0].exp();
             let want: f64 = simpson(lower, upper).iter().map(|&(y, w)| w * at(&log, y, y, y, &theta)[0].exp()).sum();
             assert!((p - want).abs() < 1e-10, "{}: between {p} not {want}", f.name);
             let all =
-                at(&below, 0.0, lower, lower, &theta)[0].exp() + p + at(&above, 0.0, upper, upper, &theta)[0].exp();
+                at(&below, lower, lower, lower, &theta)[0].exp() + p + at(&above, upper, upper, upper, &theta)[0].exp();
             assert!((all - 1.0).abs() < 1e-13, "{}: below, between and above make {all}", f.name);
         }
     }
@@ -138,10 +139,10 @@ fn intervals_have_the_probability_of_the_density() {
 #[test]
 fn starts_lie_in_range() {
     for f in FAMILIES {
-        let spread = Moments { weight: 40.0, mean: 0.45, variance: 0.2, min: 0.0, max: 1.0 };
-        let flat = Moments { weight: 3.0, mean: 0.0, variance: 0.0, min: 0.0, max: 0.0 };
+        let spread = Moments::of([0.0, 0.1, 0.2, 0.6, 0.9, 1.0].into_iter().map(|y| (y, 7.0)));
+        let flat = Moments::of([(0.0, 3.0)].into_iter());
         for m in [spread, flat] {
-            for (p, x) in f.parameters.iter().zip((f.start)(&m)) {
+            for (p, x) in f.parameters.iter().zip((f.start)(&m, &vec![None; f.parameters.len()])) {
                 assert!(p.range.contains(x), "{} {} starts at {x}", f.name, p.name);
             }
         }

@@ -1,6 +1,6 @@
 //! Every family as a user sees it, the ones that are no single density included.
 
-use super::{FAMILIES, Family};
+use super::{FAMILIES, Family, Information};
 
 /// A family in words.
 #[derive(Debug, Clone, PartialEq)]
@@ -34,8 +34,10 @@ pub struct ListedParameter {
 
 impl Listing {
     fn of(family: &Family) -> Listing {
-        let mut information: Vec<String> =
-            family.information.iter().map(|(a, b, text)| format!("({a}, {b}): {text}")).collect();
+        let mut information: Vec<String> = match family.information {
+            Information::Closed(list) => list.iter().map(|(a, b, text)| format!("({a}, {b}): {text}")).collect(),
+            Information::Computed => Vec::new(),
+        };
         information.push(family.information_note.to_string());
         Listing {
             name: family.name.into(),

@@ -12,7 +12,7 @@ pub mod poisson;
 pub use link::Link;
 pub use listing::Listing;
 
-use crate::math::Range;
+use crate::math::{Random, Range};
 
 /// What a response of the family looks like; the reader checks the data against it.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -21,10 +21,36 @@ pub enum Support {
     Real,
     /// Numbers >= 0.
     Nonnegative,
+    /// Numbers > 0.
+    Positive,
+    /// Numbers > 0 and < 1.
+    Unit,
+    /// Numbers at or above the known row parameter of this name.
+    From(&'static str),
     /// Whole numbers >= 0.
     Count,
+    /// Whole numbers >= 1.
+    CountFromOne,
     /// Whole numbers from 0 to the number of trials.
     CountOfTrials,
+}
+
+impl Support {
+    /// Whether the response counts, so that both ends of an interval belong to it.
+    pub fn is_count(self) -> bool {
+        matches!(self, Support::Count | Support::CountFromOne | Support::CountOfTrials)
+    }
+}
+
+/// Whether a row parameter is estimated.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Given {
+    /// It is, unless the study makes it known.
+    Estimated,
+    /// It must be known: the family has no likelihood to estimate it by.
+    Known,
+    /// It is known, with this value unless the study says another.
+    KnownAs(f64),
 }
 
 /// A row parameter of a family.
@@ -34,14 +60,36 @@ pub struct RowParameter {
     pub name: &'static str,
     /// Natural range.
     pub range: Range,
-    /// Links it may have with terms; the first is the default.
+    /// Links it may have with terms; the first is the default. Empty: it takes no terms.
     pub links: &'static [Link],
     /// In words.
     pub meaning: &'static str,
+    /// Whether it is estimated.
+    pub given: Given,
 }
 
-/// A univariate family. The formulas are texts of the expression language over `y` (or `lower`, `upper`), the row
-/// parameters, and `exposure` or `trials`; they are the very texts that are computed.
+impl RowParameter {
+    /// An estimated row parameter.
+    pub const fn new(name: &'static str, range: Range, links: &'static [Link], meaning: &'static str) -> RowParameter {
+        RowParameter { name, range, links, meaning, given: Given::Estimated }
+    }
+}
+
+/// Per-row amounts that formulas may name beside `y` and the row parameters.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Amounts {
+    /// Multiplies a rate; 1 unless said.
+    pub exposure: f64,
+    /// Number of trials or draws; 1 unless said.
+    pub trials: f64,
+    /// Successes among what is drawn from.
+    pub successes: f64,
+    /// Failures among what is drawn from.
+    pub failures: f64,
+}
+
+/// A univariate family. The formulas are texts of the expression language over `y` (or `at`), the row parameters, and the amounts
+/// the family names; they are the very texts that are computed.
 #[derive(Debug, Clone, Copy)]
 pub struct Family {
     /// Name in a study.
@@ -52,46 +100,111 @@ pub struct Family {
     pub support: Support,
     /// Row parameters, in order.
     pub parameters: &'static [RowParameter],
+    /// Which of `exposure`, `trials`, `successes`, `failures` the formulas name.
+    pub amounts: &'static [&'static str],
     /// log f(y).
     pub log_density: &'static str,
-    /// log P(Y > lower), log P(Y < upper) and log P(lower < Y < upper), where the family has them.
-    pub censored: Option<Censored>,
-    /// Expected information of one row: (row parameter, row parameter, text), symmetric, zero where not listed.
-    pub information: &'static [(&'static str, &'static str, &'static str)],
+    /// Distribution function, where the family has one.
+    pub distribution: Option<Distribution>,
+    /// Expected information of one row.
+    pub information: Information,
     /// How the information is got, in words.
     pub information_note: &'static str,
     /// Where the method or the density is published.
     pub source: &'static str,
-    /// Moment estimates from values with weights: one number a row parameter.
-    pub start: fn(&Moments) -> Vec<f64>,
+    /// Starting values from moments: one number a row parameter, inside its range. `known` holds the values of those that are known.
+    pub start: fn(moments: &Moments, known: &[Option<f64>]) -> Vec<f64>,
+    /// Draws one response from row parameters (in order) and amounts.
+    pub sample: fn(parameters: &[f64], amounts: &Amounts, random: &mut Random) -> f64,
     /// Whether l is concave in the row parameters or under each default link.
     pub concave: bool,
 }
 
-/// The formulas for a response known only to lie in an interval.
+/// The distribution function on the log scale, as texts in `at`.
 #[derive(Debug, Clone, Copy)]
-pub struct Censored {
-    /// log P(Y > lower)
-    pub above: &'static str,
-    /// log P(Y < upper)
+pub struct Distribution {
+    /// log P(Y <= at)
     pub below: &'static str,
-    /// log P(lower < Y < upper)
-    pub between: &'static str,
+    /// log P(Y > at)
+    pub above: &'static str,
+    /// log P(lower < Y <= upper) in `lower` and `upper`, where a form better than the difference of the two is known.
+    pub between: Option<&'static str>,
 }
 
-/// Weighted moments of a response, from which starting values are computed.
+/// Expected information of one row between row parameters.
+#[derive(Debug, Clone, Copy)]
+pub enum Information {
+    /// (row parameter, row parameter, text), symmetric, zero where not listed.
+    Closed(&'static [(&'static str, &'static str, &'static str)]),
+    /// By sum over the support, or by quadrature.
+    Computed,
+}
+
+/// Weighted summaries of a response, from which starting values are computed (per unit of exposure, or per trial).
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct Moments {
     /// Sum of the weights.
     pub weight: f64,
-    /// Weighted mean (per unit of exposure, or per trial).
+    /// Weighted mean.
     pub mean: f64,
     /// Weighted variance about it (divisor the weight).
     pub variance: f64,
+    /// Third central moment over the 3/2 power of the variance; 0 where there is no variance.
+    pub skewness: f64,
     /// Smallest value.
     pub min: f64,
     /// Largest value.
     pub max: f64,
+    /// Weighted quartiles: a quarter, half and three quarters of the weight lie at or below them.
+    pub quartiles: [f64; 3],
+    /// Mean of log y over the positive values; 0 where there is none.
+    pub log_mean: f64,
+    /// Variance of log y over the positive values.
+    pub log_variance: f64,
+    /// Mean of 1 / y over the positive values; 0 where there is none.
+    pub inverse_mean: f64,
+    /// Mean number of trials or draws a row (1 where there are none).
+    pub trials: f64,
+    /// Weighted means of cos y and sin y.
+    pub direction: (f64, f64),
+}
+
+impl Moments {
+    /// Summaries of values with weights; rows of weight 0 say nothing. `trials` is left 1.
+    pub fn of(rows: impl Iterator<Item = (f64, f64)>) -> Moments {
+        let mut rows: Vec<(f64, f64)> = rows.filter(|r| r.1 > 0.0 && r.0.is_finite()).collect();
+        let mut m = Moments { trials: 1.0, ..Moments::default() };
+        if rows.is_empty() {
+            return m;
+        }
+        rows.sort_by(|a, b| a.0.total_cmp(&b.0));
+        m.weight = rows.iter().map(|r| r.1).sum();
+        let mean = |f: &dyn Fn(f64) -> f64| rows.iter().map(|&(y, w)| w * f(y)).sum::<f64>() / m.weight;
+        let centre = mean(&|y| y);
+        let variance = mean(&|y| (y - centre).powi(2));
+        let third = mean(&|y| (y - centre).powi(3));
+        m.direction = (mean(&libm::cos), mean(&libm::sin));
+        (m.mean, m.variance) = (centre, variance);
+        m.skewness = if variance > 0.0 { third / (variance * variance.sqrt()) } else { 0.0 };
+        (m.min, m.max) = (rows[0].0, rows[rows.len() - 1].0);
+        let mut sum = 0.0;
+        let mut next = 0;
+        for &(y, w) in &rows {
+            sum += w;
+            while next < 3 && sum >= 0.25 * (next as f64 + 1.0) * m.weight {
+                m.quartiles[next] = y;
+                next += 1;
+            }
+        }
+        let positive: Vec<(f64, f64)> = rows.iter().copied().filter(|r| r.0 > 0.0).collect();
+        let weight: f64 = positive.iter().map(|r| r.1).sum();
+        if weight > 0.0 {
+            m.log_mean = positive.iter().map(|r| r.1 * libm::log(r.0)).sum::<f64>() / weight;
+            m.log_variance = positive.iter().map(|r| r.1 * (libm::log(r.0) - m.log_mean).powi(2)).sum::<f64>() / weight;
+            m.inverse_mean = positive.iter().map(|r| r.1 / r.0).sum::<f64>() / weight;
+        }
+        m
+    }
 }
 
 /// The table: a new family is a room of its own and a row here.

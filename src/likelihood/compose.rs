@@ -6,8 +6,8 @@ use super::model::{Amount, Form, Model};
 use super::rows::{LOWER, RowKind, Rows, UPPER, Y, table_key};
 use super::statement::{Body, Statement};
 use crate::data::{Table, Values};
-use crate::expr::{Graph, Id, Name, Scope, Sign, Variable, build, parse_expression};
-use crate::family::{Family, Link};
+use crate::expr::{Graph, Id, Name, Relation, Scope, Sign, Variable, build, parse_expression};
+use crate::family::{Distribution, Family, Information, Link};
 use crate::math::Range;
 
 /// A scalar parameter of the template that all levels of `per` follow.
@@ -174,19 +174,49 @@ impl Template<'_> {
             }
             Body::Density(f) => {
                 let s = self.family_scope(graph, f, None, rows);
-                text_node(graph, formula_text(f, kind)?, &s, "model.family")
+                self.log_probability(graph, f, kind, &s)
             }
             Body::Mixture(parts) => {
                 let mut pairs = Vec::new();
                 for (k, (name, f)) in parts.iter().enumerate() {
                     let s = self.family_scope(graph, f, Some(k), rows);
-                    let log = text_node(graph, formula_text(f, kind)?, &s, "model.family")?;
+                    let log = self.log_probability(graph, f, kind, &s)?;
                     let share = Name::single("share").then(name);
                     let at = self.locals.iter().position(|l| l.name == share).unwrap_or_default();
                     pairs.push((locals[at], log));
                 }
                 Ok(graph.log_mix(&pairs))
             }
+        }
+    }
+
+    /// log of the density, or of the probability of the interval, of a family in its scope.
+    fn log_probability(
+        &self,
+        graph: &mut Graph,
+        f: &Family,
+        kind: RowKind,
+        scope: &Scope,
+    ) -> Result<Id, LikelihoodError> {
+        if kind == RowKind::Exact {
+            return text_node(graph, f.log_density, scope, "model.family");
+        }
+        let Some(d) = &f.distribution else {
+            return Err(LikelihoodError::statement(
+                "model.family",
+                format!("{} has no distribution function here, so its response cannot be censored or binned", f.name),
+                "give the response as exact values, or choose a family that has one",
+            ));
+        };
+        let mut end = |key: &str| match self.rows.column(key) {
+            Some((i, _)) => graph.column(i),
+            None => graph.constant(f64::NAN),
+        };
+        let (lower, upper) = (end(LOWER), end(UPPER));
+        match kind {
+            RowKind::Above => tail(graph, d.above, scope, lower),
+            RowKind::Below => tail(graph, d.below, scope, upper),
+            _ => between(graph, d, scope, lower, upper),
         }
     }
 
@@ -205,7 +235,8 @@ impl Template<'_> {
             Body::Density(f) if kind == RowKind::Exact => {
                 let s = self.family_scope(graph, f, None, rows);
                 let at = |name: &str| f.parameters.iter().position(|p| p.name == name).unwrap_or_default();
-                for (a, b, text) in f.information {
+                let Information::Closed(list) = f.information else { return Ok(None) };
+                for (a, b, text) in list {
                     let node = text_node(graph, text, &s, "model.family")?;
                     entries.push((rows[at(a)], rows[at(b)], node));
                     if a != b {
@@ -242,20 +273,31 @@ impl Template<'_> {
     }
 }
 
-fn formula_text(f: &Family, kind: RowKind) -> Result<&'static str, LikelihoodError> {
-    if kind == RowKind::Exact {
-        return Ok(f.log_density);
+/// log P(lower < Y <= upper) from the distribution function: from whichever tail is the smaller at the lower end.
+fn between(graph: &mut Graph, d: &Distribution, scope: &Scope, lower: Id, upper: Id) -> Result<Id, LikelihoodError> {
+    if let Some(text) = d.between {
+        let mut s = scope.clone();
+        s.insert(LOWER, lower);
+        s.insert(UPPER, upper);
+        return text_node(graph, text, &s, "model.family");
     }
-    match (&f.censored, kind) {
-        (Some(c), RowKind::Above) => Ok(c.above),
-        (Some(c), RowKind::Below) => Ok(c.below),
-        (Some(c), _) => Ok(c.between),
-        (None, _) => Err(LikelihoodError::statement(
-            "model.family",
-            format!("{} has no form here for a response that is censored or binned", f.name),
-            "give the response as exact values, or use normal, exponential or a mixture of them",
-        )),
-    }
+    let (f_low, f_high) = (tail(graph, d.below, scope, lower)?, tail(graph, d.below, scope, upper)?);
+    let (s_low, s_high) = (tail(graph, d.above, scope, lower)?, tail(graph, d.above, scope, upper)?);
+    let mut difference = |more: Id, less: Id| {
+        let gap = graph.subtract(more, less);
+        let log = graph.call(crate::expr::Function::Log1mexp, &[gap]);
+        graph.add(more, log)
+    };
+    let (left, right) = (difference(f_high, f_low), difference(s_low, s_high));
+    let low_side = graph.compare(Relation::Less, f_low, s_low);
+    Ok(graph.choice(low_side, left, right))
+}
+
+/// A tail of the distribution function at a node.
+fn tail(graph: &mut Graph, text: &str, scope: &Scope, at: Id) -> Result<Id, LikelihoodError> {
+    let mut s = scope.clone();
+    s.insert("at", at);
+    text_node(graph, text, &s, "model.family")
 }
 
 /// Whether a setting makes a row parameter a linear predictor.

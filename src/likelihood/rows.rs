@@ -84,23 +84,11 @@ impl Rows {
     }
 
     /// Moments of the response over some rows, per unit of `size` (exposure or trials).
-    pub(super) fn moments(&self, rows: impl Iterator<Item = usize> + Clone, size: Option<&[f64]>) -> Moments {
-        let mut m = Moments { min: f64::INFINITY, max: f64::NEG_INFINITY, ..Moments::default() };
-        let each = rows.map(|i| {
+    pub(super) fn moments(&self, rows: impl Iterator<Item = usize>, size: Option<&[f64]>) -> Moments {
+        Moments::of(rows.map(|i| {
             let s = size.map_or(1.0, |s| s[i]);
-            (self.weight(i) * s, self.values[i] / s)
-        });
-        for (w, y) in each.clone() {
-            m.weight += w;
-            m.mean += w * y;
-            m.min = m.min.min(y);
-            m.max = m.max.max(y);
-        }
-        if m.weight > 0.0 {
-            m.mean /= m.weight;
-            m.variance = each.map(|(w, y)| w * (y - m.mean).powi(2)).sum::<f64>() / m.weight;
-        }
-        m
+            (self.values[i] / s, self.weight(i) * s)
+        }))
     }
 }
 
@@ -276,10 +264,13 @@ fn columns(
 fn check(table: &Table, name: &str, y: &[f64], support: Option<Support>) -> Result<(), LikelihoodError> {
     let (ok, words): (fn(f64) -> bool, &str) = match support {
         Some(Support::Nonnegative) => (|y| y >= 0.0 && y.is_finite(), "a number, 0 or more"),
+        Some(Support::Positive) => (|y| y > 0.0 && y.is_finite(), "a number above 0"),
+        Some(Support::Unit) => (|y| y > 0.0 && y < 1.0, "a number above 0 and below 1"),
+        Some(Support::CountFromOne) => (|y| y >= 1.0 && y.fract() == 0.0, "a whole number, 1 or more"),
         Some(Support::Count | Support::CountOfTrials) => {
             (|y| y >= 0.0 && y.fract() == 0.0, "a whole number, 0 or more")
         }
-        Some(Support::Real) | None => (f64::is_finite, "a finite number"),
+        Some(Support::Real | Support::From(_)) | None => (f64::is_finite, "a finite number"),
     };
     match y.iter().position(|&v| !ok(v)) {
         Some(row) => Err(fault(table, row, name, y[row], words)),

@@ -109,15 +109,24 @@ fn density(shape: &Shape, f: &Family, level: usize, members: &[usize], phi: &mut
     let mut store = Vec::new();
     let size = size(shape, None, &mut store);
     let mut moments = shape.rows.moments(members.iter().copied(), size);
-    let mut values = (f.start)(&moments);
+    let known: Vec<Option<f64>> = (0..f.parameters.len())
+        .map(|row| {
+            let at = shape.locals.iter().position(|l| l.row == Some(row))?;
+            if let Bound::Known(x) = shape.bound_locals[level][at] { Some(x) } else { None }
+        })
+        .collect();
+    let mut values = (f.start)(&moments, &known);
     for (k, p) in shape.predictors.iter().enumerate() {
-        let fitted =
-            if p.local.row == 0 { least_squares(shape, f, level, k, members, size, &moments, phi) } else { None };
+        let fitted = if p.local.row == 0 {
+            least_squares(shape, f, level, k, members, size, &moments, &known, phi)
+        } else {
+            None
+        };
         if let Some(rest) = fitted
             && p.local.link == Link::Identity
         {
             moments.variance = rest;
-            let again = (f.start)(&moments);
+            let again = (f.start)(&moments, &known);
             values.iter_mut().zip(again).skip(1).for_each(|(v, a)| *v = a);
         }
         if fitted.is_none() {
@@ -128,6 +137,23 @@ fn density(shape: &Shape, f: &Family, level: usize, members: &[usize], phi: &mut
         if let Some(row) = l.row {
             set(phi, *b, values[row]);
         }
+    }
+}
+
+/// The summaries of one value.
+fn at_one(y: f64, weight: f64) -> Moments {
+    let positive = y > 0.0;
+    Moments {
+        weight,
+        mean: y,
+        min: y,
+        max: y,
+        quartiles: [y; 3],
+        log_mean: if positive { libm::log(y) } else { 0.0 },
+        inverse_mean: if positive { 1.0 / y } else { 0.0 },
+        trials: 1.0,
+        direction: (libm::cos(y), libm::sin(y)),
+        ..Moments::default()
     }
 }
 
@@ -167,6 +193,7 @@ fn least_squares(
     members: &[usize],
     size: Option<&[f64]>,
     moments: &Moments,
+    known: &[Option<f64>],
     phi: &mut Vector,
 ) -> Option<f64> {
     let link = shape.predictors[k].local.link;
@@ -190,8 +217,8 @@ fn least_squares(
     let target = |i: usize| {
         let s = size.map_or(1.0, |s| s[i]);
         let y = (1.0 - pull) * shape.rows.values[i] / s + pull * moments.mean;
-        let own = Moments { weight: s, mean: y, variance: moments.variance, min: y, max: y };
-        link.forward((f.start)(&own)[0]) - offset.map_or(0.0, |o| o[i])
+        let own = Moments { variance: moments.variance, log_variance: moments.log_variance, ..at_one(y, s) };
+        link.forward((f.start)(&own, known)[0]) - offset.map_or(0.0, |o| o[i])
     };
     let weight = |i: usize| shape.rows.weight(i) * size.map_or(1.0, |s| s[i]);
     for &i in members.iter().step_by(step) {
@@ -248,21 +275,7 @@ fn mixture(shape: &Shape, parts: &[(Name, &'static Family)], level: usize, membe
     let total: f64 = sorted.iter().map(|s| s.1).sum();
     let bound = &shape.bound_locals[level];
     let local = |name: &Name| shape.locals.iter().position(|l| l.local.name == *name);
-    let of = |weights: &[f64]| {
-        let mut m = Moments { min: f64::INFINITY, max: f64::NEG_INFINITY, ..Moments::default() };
-        for (&(y, _), &w) in sorted.iter().zip(weights) {
-            m.weight += w;
-            m.mean += w * y;
-            if w > 0.0 {
-                m.min = m.min.min(y);
-                m.max = m.max.max(y);
-            }
-        }
-        m.mean /= m.weight.max(f64::MIN_POSITIVE);
-        m.variance = sorted.iter().zip(weights).map(|(s, w)| w * (s.0 - m.mean).powi(2)).sum::<f64>()
-            / m.weight.max(f64::MIN_POSITIVE);
-        m
-    };
+    let of = |weights: &[f64]| Moments::of(sorted.iter().zip(weights).map(|(s, &w)| (s.0, w)));
     let everything = of(&sorted.iter().map(|s| s.1).collect::<Vec<_>>());
     // quantile splits: component j begins with the j-th slice of the response
     let mut shares = vec![1.0 / k as f64; k];
@@ -301,7 +314,7 @@ fn mixture(shape: &Shape, parts: &[(Name, &'static Family)], level: usize, membe
             m = everything;
         }
         m.variance = m.variance.max(1e-3 * everything.variance);
-        values.push(settle(j, (part.1.start)(&m)));
+        values.push(settle(j, (part.1.start)(&m, &known[j])));
     }
     let logs: Vec<Option<Scalars>> = parts.iter().map(|(_, f)| log_density(f)).collect();
     if logs.iter().all(Option::is_some) {
@@ -327,7 +340,7 @@ fn mixture(shape: &Shape, parts: &[(Name, &'static Family)], level: usize, membe
                 shares[j] = (m.weight / total).max(1e-3);
                 if m.weight > 2.0 {
                     m.variance = m.variance.max(1e-3 * everything.variance);
-                    values[j] = settle(j, (parts[j].1.start)(&m));
+                    values[j] = settle(j, (parts[j].1.start)(&m, &known[j]));
                 }
             }
             let sum: f64 = shares.iter().sum();

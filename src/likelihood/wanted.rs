@@ -17,8 +17,9 @@ pub fn wanted(model: &Model) -> Result<(Vec<Wanted>, Vec<Pair>), LikelihoodError
     let support = statement.support();
     let of_support = match support {
         Some(Support::Nonnegative) => Sort::Nonnegative,
-        Some(Support::Count | Support::CountOfTrials) => Sort::Count,
-        Some(Support::Real) | None => Sort::Number,
+        Some(Support::Positive) => Sort::Positive,
+        Some(Support::Count | Support::CountFromOne | Support::CountOfTrials) => Sort::Count,
+        Some(Support::Real | Support::Unit | Support::From(_)) | None => Sort::Number,
     };
     let (mut out, mut pairs) = (Vec::new(), Vec::new());
     let mut want = |name: &str, sort: Sort| {

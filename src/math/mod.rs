@@ -3,6 +3,7 @@
 //! - [`special`]: scalar functions of the expression language, plain `fn(f64) -> f64`, NaN outside their domain.
 //! - [`tail`]: upper tail probabilities of test statistics and their logarithms.
 //! - [`linear`]: rank and null space, inertia, definite solves, orthogonalisation of a design.
+//! - [`Random`]: random numbers from a seed.
 //! - [`Range`]: the natural range of a parameter and its written form.
 //!
 //! Transcendental functions come from the `libm` crate, not from the system, so that every machine computes the same bits.
@@ -16,9 +17,11 @@ pub type Cholesky = nalgebra::Cholesky<f64, nalgebra::Dyn>;
 
 pub mod error;
 pub mod linear;
+pub mod random;
 pub mod range;
 pub mod special;
 pub mod tail;
 
 pub use error::Error;
+pub use random::Random;
 pub use range::Range;

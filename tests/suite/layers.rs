@@ -22,6 +22,7 @@ const FLOORS: &[(&str, &[&str])] = &[
 /// Outside crates and the floors that may name them.
 const CRATES: &[(&str, &[&str])] = &[
     ("nalgebra", &["math"]),
+    ("rand_chacha", &["math"]),
     ("statrs", &["math"]),
     ("csv", &["data"]),
     ("rayon", &["likelihood"]),
