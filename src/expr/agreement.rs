@@ -23,6 +23,10 @@ const TEXTS: &[&str] = &[
     "bessel_i(0, a * x) + erfc(a * x / 3) + normal_cdf(x - b)",
     "(a * exp(-b * x) + 1 - y)^2 / a^2 + 1 / (1 + b * x)^3",
     "y * log(y * a) - y * b",
+    "deviance(y, a * x) + deviance(y * a, b) + factorial_remainder(a * y + b)",
+    "stirling_inverse(0, a * x) + stirling_inverse(1, b / 30) * stirling_inverse(0, a * b)",
+    "log1p_over(0, a * x - b / 3) + log1p_over(1, b * y)",
+    "log1p_excess(0, a * x - b / 3) * log1p_excess(1, b * y / 9)",
 ];
 
 fn scope(graph: &mut Graph) -> Scope {

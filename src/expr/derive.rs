@@ -178,9 +178,22 @@ impl Graph {
                 let first = one(self);
                 self.call(Function::Polygamma, &[first, x])
             }
-            Function::Polygamma => {
-                let next = self.sum(1.0, &[(arguments[0], 1.0)]);
-                self.call(Function::Polygamma, &[next, x])
+            Function::Polygamma | Function::StirlingInverse | Function::Log1pOver | Function::Log1pExcess => {
+                self.next_order(function, arguments, 0, at)
+            }
+            Function::Deviance if at == 0 => {
+                let (above, below) = (self.call(Function::Log, &[x]), self.call(Function::Log, &[arguments[1]]));
+                self.subtract(above, below)
+            }
+            // as a product, so that zero observed of zero expected counts for nothing
+            Function::Deviance => {
+                let ratio = self.divide(arguments[0], x);
+                self.sum(1.0, &[(ratio, -1.0)])
+            }
+            Function::FactorialRemainder => {
+                let up = self.sum(1.0, &[(x, 1.0)]);
+                let (psi, log) = (self.call(Function::Digamma, &[up]), self.call(Function::Log, &[x]));
+                self.subtract(psi, log)
             }
             Function::BesselI => {
                 // I'_v = I_{v+1} + (v / x) I_v
@@ -236,6 +249,16 @@ impl Graph {
             // these take their normal form when built and never stand in a graph
             Function::LogSumExp | Function::LogMix => self.constant(f64::NAN),
         }
+    }
+
+    /// The same call with the order that stands at `order` one higher. By an order itself nothing is differentiated.
+    fn next_order(&mut self, function: Function, arguments: &[Id], order: usize, at: usize) -> Id {
+        if at == order {
+            return self.constant(f64::NAN);
+        }
+        let mut next = arguments.to_vec();
+        next[order] = self.sum(1.0, &[(arguments[order], 1.0)]);
+        self.call(function, &next)
     }
 
     /// exp(-x^2 / 2 - minus)

@@ -3,7 +3,7 @@
 use super::Function;
 use super::graph::{Id, Node, Number};
 use super::lower::Lower;
-use super::program::{Op, Source};
+use super::program::{Argument, Op, Source};
 
 impl Lower<'_> {
     pub(super) fn push(&mut self, op: Op) -> Source {
@@ -73,13 +73,20 @@ impl Lower<'_> {
                 let s = all(self, &a);
                 self.push(Op::ShiftOf(s.into()))
             }
-            Node::Call(f, a) => {
+            Node::Call(Function::Deviance, a) => {
                 let s = all(self, &a);
-                self.push(match s[..] {
-                    [x] => Op::Call1(f, x),
-                    [x, y, ..] => Op::Call2(f, x, y),
-                    [] => Op::Fill(0),
-                })
+                self.push(Op::Deviance(s[0], s[1]))
+            }
+            Node::Call(f, a) if a.len() == 1 => {
+                let x = self.row(a[0]);
+                self.push(Op::Call1(f, x))
+            }
+            Node::Call(f, a) => {
+                let arguments = a.iter().map(|&i| {
+                    if self.graph.is_scalar(i) { Argument::Scalar(self.scalar(i)) } else { Argument::Row(self.row(i)) }
+                });
+                let arguments = arguments.collect();
+                self.push(Op::Call(f, arguments))
             }
             Node::Choice(c, a, b) => {
                 let (c, a, b) = (self.row(c), self.row(a), self.row(b));

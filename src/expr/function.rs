@@ -46,6 +46,16 @@ pub enum Function {
     Polygamma,
     /// `log_mix(w1, a1, w2, a2, ...)` = log(sum w_i exp(a_i)), weights >= 0
     LogMix,
+    /// `deviance(x, m)` = x log(x/m) - x + m, x, m >= 0
+    Deviance,
+    /// `factorial_remainder(x)` = lgamma(x+1) - x log x + x
+    FactorialRemainder,
+    /// `stirling_inverse(order, c)`, derivatives of lgamma(1/c) less Stirling's formula
+    StirlingInverse,
+    /// `log1p_over(order, w)`, derivatives of log1p(w)/w
+    Log1pOver,
+    /// `log1p_excess(order, w)`, derivatives of (w - log1p(w))/w^2
+    Log1pExcess,
 }
 
 /// One row of the table: the function, its written name, how many arguments (fewest, most), and what it is in words.
@@ -99,6 +109,29 @@ pub const TABLE: &[Entry] = &[
     Entry(Function::InverseMillsSlope, "inverse_mills_slope", 1, 1, "derivative of inverse_mills"),
     Entry(Function::Polygamma, "polygamma", 2, 2, "derivative of digamma of the given order, (order, x)"),
     Entry(Function::LogMix, "log_mix", 2, usize::MAX, "log(w1 exp(a1) + w2 exp(a2) + ...), (w1, a1, w2, a2, ...)"),
+    Entry(Function::Deviance, "deviance", 2, 2, "x log(x/m) - x + m, accurate near x = m, (x, m)"),
+    Entry(
+        Function::FactorialRemainder,
+        "factorial_remainder",
+        1,
+        1,
+        "lgamma(x + 1) - x log(x) + x, accurate at large x",
+    ),
+    Entry(
+        Function::StirlingInverse,
+        "stirling_inverse",
+        2,
+        2,
+        "derivative of the given order of lgamma(1/c) - (1/c - 1/2) log(1/c) + 1/c - log(2 pi)/2, (order, c)",
+    ),
+    Entry(Function::Log1pOver, "log1p_over", 2, 2, "derivative of the given order of log1p(w)/w, (order, w)"),
+    Entry(
+        Function::Log1pExcess,
+        "log1p_excess",
+        2,
+        2,
+        "derivative of the given order of (w - log1p(w))/w^2, (order, w)",
+    ),
 ];
 
 impl Function {

@@ -245,7 +245,13 @@ impl Graph {
                 | Function::NormalCdf
                 | Function::Erfc
                 | Function::InverseMills => Positive,
-                Function::Abs => Nonnegative,
+                Function::Abs | Function::Deviance | Function::FactorialRemainder => Nonnegative,
+                // completely monotone: signs of the derivatives alternate
+                Function::Log1pOver | Function::Log1pExcess => match self.as_constant(a[0]) {
+                    Some(order) if is_whole(order / 2.0) => Positive,
+                    _ => Unknown,
+                },
+                Function::StirlingInverse if self.as_constant(a[0]) == Some(0.0) => Nonnegative,
                 Function::Min | Function::Max => {
                     let signs = a.iter().map(|&i| self.sign(i));
                     if *f == Function::Min { signs.min() } else { signs.max() }.unwrap_or(Unknown)

@@ -6,8 +6,10 @@ use multiversion::multiversion;
 
 use super::Function;
 use super::graph::power;
-use super::program::{BLOCK, Block, Gather, Op, Program, Source, Step};
-use super::vector::{LANES, dot, dot_zero, exp_block, log_block, log1p_exp_block, logistic_block, sum, sum_log};
+use super::program::{ARGUMENTS, Argument, BLOCK, Block, Gather, Op, Program, Source, Step};
+use super::vector::{
+    LANES, deviance_block, dot, dot_zero, exp_block, log_block, log1p_exp_block, logistic_block, sum, sum_log,
+};
 
 /// Columns of one part of the rows, in blocks.
 #[derive(Debug, Clone, Default)]
@@ -197,7 +199,23 @@ fn operate(op: &Op, out: &mut [f64], registers: &[Box<Block>], store: &Store, bl
                 f => each1(out, a, |x| f.value(&[x])),
             }
         }
-        Op::Call2(f, a, b) => each2(out, get(*a), get(*b), |x, y| f.value(&[x, y])),
+        Op::Deviance(a, b) => deviance_block(out, get(*a), get(*b)),
+        Op::Call(f, a) => {
+            let mut values = [0.0; ARGUMENTS];
+            for (v, x) in values.iter_mut().zip(a) {
+                if let Argument::Scalar(s) = x {
+                    *v = scalars[*s as usize];
+                }
+            }
+            for (i, o) in out.iter_mut().enumerate() {
+                for (v, x) in values.iter_mut().zip(a) {
+                    if let Argument::Row(s) = x {
+                        *v = get(*s)[i];
+                    }
+                }
+                *o = f.value(&values[..a.len()]);
+            }
+        }
         Op::Greatest(a) => fold(out, a, &get, |x, y| if y > x || y.is_nan() { y } else { x }),
         Op::Least(a) => fold(out, a, &get, |x, y| if y < x || y.is_nan() { y } else { x }),
         Op::ShiftOf(a) => {

@@ -36,6 +36,16 @@ pub(super) enum Source {
     Weight,
 }
 
+/// An argument of a call: one value a row, or one for all rows.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) enum Argument {
+    Row(Source),
+    Scalar(u32),
+}
+
+/// The most arguments a call on blocks has; those that take any number are written in other operations.
+pub(super) const ARGUMENTS: usize = 8;
+
 /// An operation on blocks; scalars are indices into the once-a-pass values.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) enum Op {
@@ -55,7 +65,9 @@ pub(super) enum Op {
     PowerConstant(Source, f64),
     Power(Source, Source),
     Call1(Function, Source),
-    Call2(Function, Source, Source),
+    /// any number of arguments, at most [`ARGUMENTS`]
+    Call(Function, Box<[Argument]>),
+    Deviance(Source, Source),
     Greatest(Box<[Source]>),
     Least(Box<[Source]>),
     /// greatest, but 0 where all are -inf
@@ -84,12 +96,13 @@ impl Op {
             | Op::Multiply(a, b)
             | Op::MultiplyZero(a, b)
             | Op::Power(a, b)
-            | Op::Call2(_, a, b)
+            | Op::Deviance(a, b)
             | Op::Compare(_, a, b)
             | Op::And(a, b)
             | Op::Or(a, b) => vec![*a, *b],
             Op::Choose(a, b, c) => vec![*a, *b, *c],
             Op::Greatest(a) | Op::Least(a) | Op::ShiftOf(a) => a.to_vec(),
+            Op::Call(_, a) => a.iter().filter_map(|x| if let Argument::Row(s) = x { Some(*s) } else { None }).collect(),
         }
     }
 
@@ -109,7 +122,7 @@ impl Op {
             | Op::Multiply(a, b)
             | Op::MultiplyZero(a, b)
             | Op::Power(a, b)
-            | Op::Call2(_, a, b)
+            | Op::Deviance(a, b)
             | Op::Compare(_, a, b)
             | Op::And(a, b)
             | Op::Or(a, b) => {
@@ -122,6 +135,13 @@ impl Op {
                 *c = f(*c);
             }
             Op::Greatest(a) | Op::Least(a) | Op::ShiftOf(a) => a.iter_mut().for_each(|s| *s = f(*s)),
+            Op::Call(_, a) => {
+                for x in a {
+                    if let Argument::Row(s) = x {
+                        *s = f(*s);
+                    }
+                }
+            }
         }
     }
 }

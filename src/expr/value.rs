@@ -42,6 +42,11 @@ impl Function {
             Function::InverseMillsSlope => special::inverse_mills_slope(a),
             Function::Polygamma => special::polygamma(a as u32, x[1]),
             Function::LogMix => special::log_mix(x),
+            Function::Deviance => special::deviance(a, x[1]),
+            Function::FactorialRemainder => special::factorial_remainder(a),
+            Function::StirlingInverse => special::stirling_inverse(a, x[1]),
+            Function::Log1pOver => special::log1p_over(a, x[1]),
+            Function::Log1pExcess => special::log1p_excess(a, x[1]),
         }
     }
 }

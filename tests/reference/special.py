@@ -180,3 +180,51 @@ for df in [1.0, 2.0, 3.0, 5.0, 10.0, 37.0, 100.0, 1000.0, 1e5]:
             row("chi_square_log10_upper", [x, df], m.log10(p) if p < mpf("0.5") else m.log1p(-m.gammainc(mpf(df) / 2, 0, mpf(x) / 2, regularized=True)) / m.log(10))
 for z in [0.0, 1e-9, 0.5, 1.96, -3.0, 8.0, 20.0, 37.0, -38.0]:
     row("normal_two_sided", [z], 2 * upper(abs(mpf(z))))
+
+# From here on points have a generator of their own, so that functions can be added at the end.
+rng = random.Random(20262)
+
+
+def deviance(x, mean):
+    x, mean = mpf(x), mpf(mean)
+    return mean if x == 0 else x * m.log(x / mean) - x + mean
+
+
+for x, mean in [(0.0, 3.5), (1.0, 1.0), (1.0, 1.0 + 2.0 ** -52), (3.0, 2.9999999), (7.0, 3.5), (7.0, 14.0), (7.0, 13.999), (1e5, 1.001e5), (1e9, 1e9 + 1), (1e-8, 3.0),
+                (50.0, 1e-8), (1e-200, 2e-200), (1e200, 1.2e200), (1e-300, 1e10), (1e300, 1e-10), (5e-324, 1.0), (0.5, 0.7071), (2.0, 4.001), (2.0, 1.0)]:
+    row("deviance", [x, mean], deviance(x, mean))
+for x in spread(1e-3, 1e6, 30):
+    mean = x * float(m.exp(rng.uniform(-1, 1) * 10.0 ** -rng.uniform(0, 9)))
+    row("deviance", [x, mean], deviance(x, mean))
+for x in [1e-300, 1e-12, 1e-8, 1e-3, 0.25, 0.5, 1.0, 2.0, 3.0, 7.0, 8.0, 8.999999, 9.0, 10.0, 15.5, 100.0, 12345.0, 1e8, 1e15, 1e200] + spread(1e-4, 30, 15):
+    with m.workdps(60 + (int(m.log10(x)) + 5 if x > 1 else 0)):
+        row("factorial_remainder", [x], m.loggamma(mpf(x) + 1) - mpf(x) * m.log(x) + x)
+
+
+def stirling_inverse_derivative(order, c):
+    """By the derivatives of lgamma in closed form; 250 digits, as they cancel at small c."""
+    with m.workdps(250):
+        z = 1 / mpf(c)
+        # mu and its derivatives in z, then by c with z' = -z^2
+        d = [m.loggamma(z) - (z - 0.5) * m.log(z) + z - m.log(2 * m.pi) / 2, m.psi(0, z) - m.log(z) + 1 / (2 * z), m.psi(1, z) - 1 / z - 1 / (2 * z ** 2),
+             m.psi(2, z) + 1 / z ** 2 + 1 / z ** 3]
+        return [d[0], -d[1] * z ** 2, d[2] * z ** 4 + 2 * d[1] * z ** 3, -d[3] * z ** 6 - 6 * d[2] * z ** 5 - 6 * d[1] * z ** 4][order]
+
+
+def log1p_over(order, w):
+    """(-1)^m m! times the integral of t^m / (1 + w t)^(m+1): Gauss' hypergeometric function."""
+    return (-1) ** order * m.factorial(order) / (order + 1) * m.hyp2f1(order + 1, order + 1, order + 2, -mpf(w))
+
+
+def log1p_excess(order, w):
+    return (-1) ** order * m.factorial(order) / (order + 2) * m.hyp2f1(order + 1, order + 2, order + 3, -mpf(w))
+
+
+for order in range(4):
+    for c in [1e-30, 1e-10, 1e-5, 0.01, 0.06, 0.0625, 0.0626, 0.066, 0.1, 0.2, 0.25, 0.5, 0.75, 1.0, 1.9999, 2.0, 2.0001, 3.0, 5.0, 10.0, 50.0, 1e3, 1e6, 1e10] + spread(1e-3, 20, 8):
+        row("stirling_inverse", [order, c], stirling_inverse_derivative(order, c))
+for order in range(5):
+    for w in [0.0, 1e-300, 1e-10, -1e-10, 1e-4, -1e-4, 0.01, 0.1, 0.4999, 0.9999, 1.0, 1.0001, 2.0, 10.0, 1e4, 1e10, -0.1, -0.25, -0.4999, -0.5, -0.5001, -0.75, -0.9, -0.99, -0.999999,
+              -1 + 1e-12] + [rng.uniform(-0.9, 2) for _ in range(6)]:
+        row("log1p_over", [order, w], log1p_over(order, w))
+        row("log1p_excess", [order, w], log1p_excess(order, w))

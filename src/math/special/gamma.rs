@@ -9,7 +9,7 @@ pub fn lgamma(x: f64) -> f64 {
 }
 
 /// Bernoulli numbers B_2, B_4, ..., B_22.
-const BERNOULLI: [f64; 11] = [
+pub(super) const BERNOULLI: [f64; 11] = [
     1.0 / 6.0,
     -1.0 / 30.0,
     1.0 / 42.0,

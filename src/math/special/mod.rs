@@ -2,14 +2,18 @@
 //! because all transcendental parts come from the `libm` crate.
 
 mod bessel;
+mod counts;
 mod gamma;
 mod interval;
 mod logistic;
 mod normal;
 #[cfg(test)]
 mod reference;
+mod smooth;
+mod stirling;
 
 pub use bessel::{bessel_i, bessel_i_scaled};
+pub use counts::{deviance, factorial_remainder};
 pub use gamma::{digamma, lgamma, polygamma};
 pub use interval::{normal_interval_slopes, normal_log_interval};
 pub use logistic::{log_logistic, log_mix, log_sum_exp, log1mexp, logistic, logit};
@@ -17,3 +21,10 @@ pub(super) use normal::erfc_scaled_argument;
 pub use normal::{
     erf, erfc, inverse_mills, inverse_mills_slope, normal_cdf, normal_log_cdf, normal_log_density, normal_quantile,
 };
+pub use smooth::{log1p_excess, log1p_over};
+pub use stirling::stirling_inverse;
+
+/// A derivative order handed in as a double: a whole number up to `most`.
+fn whole(order: f64, most: usize) -> Option<usize> {
+    (0..=most).find(|&m| m as f64 == order)
+}
