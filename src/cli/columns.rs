@@ -20,7 +20,7 @@ pub fn uses(study: &Study, column: &str) -> Vec<String> {
             add(lower == column, "the lower end of the response".into());
             add(upper == column, "the upper end of the response".into());
         }
-        Response::Labels(all) => add(all.iter().any(|c| c == column), "a response".into()),
+        Response::Several(all) => add(all.iter().any(|c| c == column), "a response".into()),
         Response::None => {}
     }
     let is = |name: &Option<String>| name.as_deref() == Some(column);
@@ -28,9 +28,13 @@ pub fn uses(study: &Study, column: &str) -> Vec<String> {
     let amount = |a: &Option<Amount>| matches!(a, Some(Amount::Column(c)) if c == column);
     add(is(&model.exposure) || model.components.iter().any(|c| is(&c.exposure)), "the exposure".into());
     add(amount(&model.trials) || model.components.iter().any(|c| amount(&c.trials)), "the number of trials".into());
+    add(amount(&model.successes), "the successes drawn from".into());
+    add(amount(&model.failures), "the failures drawn from".into());
+    add(amount(&model.above), "the end above which values could be recorded".into());
+    add(amount(&model.below), "the end below which values could be recorded".into());
     add(model.event.as_ref().is_some_and(|e| e.column == column), "tells whether the response was seen".into());
     add(is(&model.per), "gives each level its own parameters".into());
-    for setting in &model.parameters {
+    for setting in model.parameters.iter().chain(model.components.iter().flat_map(|c| &c.parameters)) {
         match &setting.form {
             Form::Plain => {}
             Form::Curve(text) => add(names(text, column), format!("in the curve of {}", setting.name)),

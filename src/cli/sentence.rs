@@ -9,7 +9,7 @@ pub fn sentence(model: &Model) -> String {
         Response::None => format!("a {} density", model.family),
         Response::Column(column) => format!("{column}: {}", model.family),
         Response::Ends { lower, upper } => format!("a response between {lower} and {upper}: {}", model.family),
-        Response::Labels(columns) => format!("{}: {}", columns.join(" x "), model.family),
+        Response::Several(columns) => format!("{}: {}", columns.join(" x "), model.family),
     };
     if !model.components.is_empty() {
         let parts: Vec<String> = model.components.iter().map(component).collect();
@@ -19,10 +19,18 @@ pub fn sentence(model: &Model) -> String {
     if !parts.is_empty() {
         out += &format!(" with {}", list(&parts));
     }
-    match &model.trials {
-        Some(Amount::Column(column)) => out += &format!(", trials {column}"),
-        Some(Amount::Number(n)) => out += &format!(", trials {n}"),
-        None => {}
+    let amount = |amount: &Option<Amount>, what: &str| match amount {
+        Some(Amount::Column(column)) => format!(", {what} {column}"),
+        Some(Amount::Number(n)) => format!(", {what} {n}"),
+        None => String::new(),
+    };
+    out += &amount(&model.trials, "trials");
+    out += &amount(&model.successes, "successes");
+    out += &amount(&model.failures, "failures");
+    if model.above.is_some() || model.below.is_some() {
+        out += ", conditioned on being recorded";
+        out += &amount(&model.above, "above");
+        out += &amount(&model.below, "below");
     }
     if let Some(column) = &model.exposure {
         out += &format!(", exposure {column}");
@@ -40,7 +48,9 @@ pub fn sentence(model: &Model) -> String {
 }
 
 fn component(component: &Component) -> String {
-    format!("{} ({})", component.name, component.family)
+    let parts: Vec<String> = component.parameters.iter().filter_map(setting).collect();
+    let with = if parts.is_empty() { String::new() } else { format!(" with {}", list(&parts)) };
+    format!("{} ({}{with})", component.name, component.family)
 }
 
 fn setting(setting: &Setting) -> Option<String> {

@@ -1,6 +1,7 @@
 //! Every family as a user sees it, the ones that are no single density included.
 
-use super::{FAMILIES, Family, Information};
+use super::composite::Group;
+use super::{COMPOSITES, Composite, FAMILIES, Family, Information};
 
 /// A family in words.
 #[derive(Debug, Clone, PartialEq)]
@@ -59,21 +60,43 @@ impl Listing {
     }
 }
 
+impl Listing {
+    fn made(family: &Composite) -> Listing {
+        let name =
+            |g: &Group| if g.pattern.is_empty() { g.name.to_string() } else { format!("{}.{}", g.name, g.pattern) };
+        let mut information = vec![family.information.to_string()];
+        if !family.maintained.is_empty() {
+            information.push(format!("maintained: {}", family.maintained));
+        }
+        Listing {
+            name: family.name.into(),
+            response: family.response.into(),
+            parameters: family
+                .groups
+                .iter()
+                .map(|g| ListedParameter {
+                    name: name(g),
+                    range: g.range.to_string(),
+                    links: g.links.iter().map(|l| l.text()).collect(),
+                    meaning: g.meaning.into(),
+                })
+                .collect(),
+            formula: family.formula.into(),
+            information: information.join("; "),
+            source: family.source.into(),
+        }
+    }
+}
+
 fn plain(name: &str, range: &str, meaning: &str) -> ListedParameter {
     ListedParameter { name: name.into(), range: range.into(), links: Vec::new(), meaning: meaning.into() }
 }
 
-/// All families, sorted by name within kind: densities, then categorical, mixture, custom.
+/// All families, sorted by name within kind: of one number, made from the data, mixture and custom.
 pub fn all() -> Vec<Listing> {
     let mut out: Vec<Listing> = FAMILIES.iter().map(|f| Listing::of(f)).collect();
-    out.push(Listing {
-        name: "categorical".into(),
-        response: "a column of labels, or several (their pairs of levels are cells)".into(),
-        parameters: vec![plain("share.LABEL", "[0, 1]", "probability of the label; sum(share.*) = 1 is maintained")],
-        formula: "log(share.LABEL) of the label seen".into(),
-        information: "(share.LABEL, share.LABEL): 1 / share.LABEL; closed form".into(),
-        source: "Aitchison and Silvey (1958), Annals of Mathematical Statistics 29".into(),
-    });
+    out.push(Listing::of(&super::point::POINT));
+    out.extend(COMPOSITES.iter().map(|f| Listing::made(f)));
     out.push(Listing {
         name: "mixture".into(),
         response: "that of its components".into(),

@@ -1,14 +1,22 @@
 //! The library of likelihoods: each one room, described as data.
 
 pub mod binomial;
+pub mod categorical;
 #[cfg(test)]
 mod checks;
+pub mod composite;
+pub mod dirichlet;
 pub mod exponential;
 pub mod link;
 pub mod listing;
+pub mod multivariate_normal;
 pub mod normal;
+pub mod ordered;
+pub mod paired_comparison;
+pub mod point;
 pub mod poisson;
 
+pub use composite::{COMPOSITES, Composite};
 pub use link::Link;
 pub use listing::Listing;
 
@@ -33,12 +41,14 @@ pub enum Support {
     CountFromOne,
     /// Whole numbers from 0 to the number of trials.
     CountOfTrials,
+    /// How many successes can be among `trials` draws from `successes` and `failures`.
+    Draws,
 }
 
 impl Support {
     /// Whether the response counts, so that both ends of an interval belong to it.
     pub fn is_count(self) -> bool {
-        matches!(self, Support::Count | Support::CountFromOne | Support::CountOfTrials)
+        matches!(self, Support::Count | Support::CountFromOne | Support::CountOfTrials | Support::Draws)
     }
 }
 
@@ -214,5 +224,10 @@ impl Family {
     /// The family of this name.
     pub fn named(name: &str) -> Option<&'static Family> {
         FAMILIES.iter().copied().find(|f| f.name == name)
+    }
+
+    /// The family of this name that a component of a mixture may have.
+    pub fn of_component(name: &str) -> Option<&'static Family> {
+        Family::named(name).or((name == point::POINT.name).then_some(&point::POINT))
     }
 }

@@ -1,12 +1,16 @@
 //! From a resolved statement to the formula of one kind of row: names are bound to columns, parameters and predictors.
 
+use std::collections::{BTreeMap, HashMap};
+
 use super::LikelihoodError;
 use super::formula::{Formula, Ingredients};
 use super::model::{Amount, Form, Model};
-use super::rows::{LOWER, RowKind, Rows, UPPER, Y, table_key};
+use super::rows::{FROM, LOWER, RowKind, Rows, UPPER, UPTO, Y, table_key};
 use super::statement::{Body, Statement};
 use crate::data::{Table, Values};
 use crate::expr::{Graph, Id, Name, Relation, Scope, Sign, Variable, build, parse_expression};
+use crate::family::composite::Made;
+use crate::family::point::POINT;
 use crate::family::{Distribution, Family, Information, Link};
 use crate::math::Range;
 
@@ -69,7 +73,7 @@ impl Template<'_> {
         let row_nodes = self.row_parameters(&mut graph, &scope, &local_nodes)?;
         variables.extend((0..self.predictors.len()).map(|k| Variable::Predictor(k as u32)));
         let log_density = self.density(&mut graph, kind, &scope, &local_nodes, &row_nodes)?;
-        let expected = self.expected(&mut graph, kind, &local_nodes, &row_nodes, &variables)?;
+        let expected = self.expected(&mut graph, kind, &row_nodes, &variables)?;
         Ok(Formula::compile(Ingredients {
             graph,
             log_density,
@@ -137,11 +141,17 @@ impl Template<'_> {
             Some(k) => &self.model.components[k].trials,
             None => &self.model.trials,
         };
-        for what in ["exposure", "trials"] {
+        let stated = [
+            ("exposure", &None),
+            ("trials", trials),
+            ("successes", &self.model.successes),
+            ("failures", &self.model.failures),
+        ];
+        for (what, amount) in stated {
             let own = self.rows.column(&of(what)).or_else(|| self.rows.column(what));
-            let id = match (own, what, trials) {
-                (Some((i, _)), ..) => graph.column(i),
-                (None, "trials", Some(Amount::Number(n))) => graph.constant(*n),
+            let id = match (own, amount) {
+                (Some((i, _)), _) => graph.column(i),
+                (None, Some(Amount::Number(n))) => graph.constant(*n),
                 _ => graph.constant(1.0),
             };
             scope.insert(what, id);
@@ -163,61 +173,93 @@ impl Template<'_> {
     ) -> Result<Id, LikelihoodError> {
         match &self.statement.body {
             Body::Custom(ast) => build(graph, ast, scope).map_err(LikelihoodError::expression("model.log_density")),
-            Body::Categorical => {
-                let mut terms = Vec::new();
-                for (cell, &share) in locals.iter().enumerate() {
-                    let indicator = graph.column(cell as u32);
-                    let log = graph.call(crate::expr::Function::Log, &[share]);
-                    terms.push((graph.multiply(indicator, log), 1.0));
-                }
-                Ok(graph.sum(0.0, &terms))
+            Body::Composite(_, _, made) => {
+                let s = self.composite_scope(graph, made, rows)?;
+                text_node(graph, &made.log_density, &s, "model.family")
             }
-            Body::Density(f) => {
-                let s = self.family_scope(graph, f, None, rows);
-                self.log_probability(graph, f, kind, &s)
-            }
-            Body::Mixture(parts) => {
-                let mut pairs = Vec::new();
-                for (k, (name, f)) in parts.iter().enumerate() {
-                    let s = self.family_scope(graph, f, Some(k), rows);
-                    let log = self.log_probability(graph, f, kind, &s)?;
-                    let share = Name::single("share").then(name);
-                    let at = self.locals.iter().position(|l| l.name == share).unwrap_or_default();
-                    pairs.push((locals[at], log));
-                }
-                Ok(graph.log_mix(&pairs))
+            Body::Density(_) | Body::Mixture(_) => {
+                let (lower, upper) = (self.end(graph, LOWER), self.end(graph, UPPER));
+                let log = self.log_probability(graph, kind, (lower, upper), locals, rows)?;
+                // what could not be recorded is taken out of the whole
+                let (from, upto) = (self.rows.column(FROM), self.rows.column(UPTO));
+                let whole = match (from.is_some(), upto.is_some()) {
+                    (false, false) => return Ok(log),
+                    (true, false) => RowKind::Above,
+                    (false, true) => RowKind::Below,
+                    (true, true) => RowKind::Between,
+                };
+                let ends = (self.end(graph, FROM), self.end(graph, UPTO));
+                let all = self.log_probability(graph, whole, ends, locals, rows)?;
+                Ok(graph.subtract(log, all))
             }
         }
     }
 
-    /// log of the density, or of the probability of the interval, of a family in its scope.
+    /// A column by key; NaN where there is none.
+    fn end(&self, graph: &mut Graph, key: &str) -> Id {
+        match self.rows.column(key) {
+            Some((i, _)) => graph.column(i),
+            None => graph.constant(f64::NAN),
+        }
+    }
+
+    /// What the formulas of a family made from the data may name.
+    fn composite_scope(&self, graph: &mut Graph, made: &Made, rows: &[Id]) -> Result<Scope, LikelihoodError> {
+        let mut scope = Scope::new("name");
+        for (i, (key, _)) in self.rows.columns.iter().enumerate().filter(|(_, c)| !c.0.starts_with(' ')) {
+            let id = graph.column(i as u32);
+            scope.insert(key.clone(), id);
+        }
+        for (r, &id) in self.statement.rows.iter().zip(rows) {
+            scope.insert(r.name.to_string(), id);
+        }
+        for (name, text) in &made.lets {
+            let id = text_node(graph, text, &scope, "model.family")?;
+            scope.insert(name.clone(), id);
+        }
+        Ok(scope)
+    }
+
+    /// log of the density, or of the probability of an interval, of the family or of the mixture.
     fn log_probability(
         &self,
         graph: &mut Graph,
-        f: &Family,
         kind: RowKind,
-        scope: &Scope,
+        ends: (Id, Id),
+        locals: &[Id],
+        rows: &[Id],
     ) -> Result<Id, LikelihoodError> {
-        if kind == RowKind::Exact {
-            return text_node(graph, f.log_density, scope, "model.family");
-        }
-        let Some(d) = &f.distribution else {
-            return Err(LikelihoodError::statement(
-                "model.family",
-                format!("{} has no distribution function here, so its response cannot be censored or binned", f.name),
-                "give the response as exact values, or choose a family that has one",
-            ));
+        let parts = match &self.statement.body {
+            Body::Density(f) => {
+                let s = self.family_scope(graph, f, None, rows);
+                return log_probability(graph, f, kind, ends, &s);
+            }
+            Body::Mixture(parts) => parts,
+            Body::Composite(..) | Body::Custom(_) => return Ok(graph.constant(f64::NAN)),
         };
-        let mut end = |key: &str| match self.rows.column(key) {
-            Some((i, _)) => graph.column(i),
-            None => graph.constant(f64::NAN),
-        };
-        let (lower, upper) = (end(LOWER), end(UPPER));
-        match kind {
-            RowKind::Above => tail(graph, d.above, scope, lower),
-            RowKind::Below => tail(graph, d.below, scope, upper),
-            _ => between(graph, d, scope, lower, upper),
+        // Where all mass stands at one value, a density beside it has none there.
+        let mut atoms = Vec::new();
+        for (k, (_, f)) in parts.iter().enumerate().filter(|(_, (_, f))| f.name == POINT.name) {
+            let s = self.family_scope(graph, f, Some(k), rows);
+            atoms.extend(s.node(f.parameters[0].name));
         }
+        let mut pairs = Vec::new();
+        for (k, (name, f)) in parts.iter().enumerate() {
+            let s = self.family_scope(graph, f, Some(k), rows);
+            let mut log = log_probability(graph, f, kind, ends, &s)?;
+            if kind == RowKind::Exact && !f.support.is_count() && f.name != POINT.name {
+                for &atom in &atoms {
+                    let y = self.end(graph, Y);
+                    let there = graph.compare(Relation::Equal, y, atom);
+                    let nothing = graph.constant(f64::NEG_INFINITY);
+                    log = graph.choice(there, nothing, log);
+                }
+            }
+            let share = Name::single("share").then(name);
+            let at = self.locals.iter().position(|l| l.name == share).unwrap_or_default();
+            pairs.push((locals[at], log));
+        }
+        Ok(graph.log_mix(&pairs))
     }
 
     /// Expected information between variables, by the chain rule from that between row parameters.
@@ -226,50 +268,93 @@ impl Template<'_> {
         &self,
         graph: &mut Graph,
         kind: RowKind,
-        locals: &[Id],
         rows: &[Id],
         variables: &[Variable],
     ) -> Result<Option<Vec<(usize, usize, Id)>>, LikelihoodError> {
         let mut entries: Vec<(Id, Id, Id)> = Vec::new();
         match &self.statement.body {
-            Body::Density(f) if kind == RowKind::Exact => {
+            Body::Density(f) if kind == RowKind::Exact && !self.rows.truncated() => {
                 let s = self.family_scope(graph, f, None, rows);
                 let at = |name: &str| f.parameters.iter().position(|p| p.name == name).unwrap_or_default();
                 let Information::Closed(list) = f.information else { return Ok(None) };
                 for (a, b, text) in list {
                     let node = text_node(graph, text, &s, "model.family")?;
                     entries.push((rows[at(a)], rows[at(b)], node));
-                    if a != b {
-                        entries.push((rows[at(b)], rows[at(a)], node));
-                    }
                 }
             }
-            Body::Categorical => {
-                for &share in locals {
-                    let node = graph.product(&[(share, -1.0)]);
-                    entries.push((share, share, node));
+            Body::Composite(_, _, made) => {
+                let s = self.composite_scope(graph, made, rows)?;
+                for (a, b, text) in &made.information {
+                    let node = text_node(graph, text, &s, "model.family")?;
+                    let of = |name: &str| s.node(name).unwrap_or(node);
+                    entries.push((of(a), of(b), node));
                 }
             }
             _ => return Ok(None),
         }
-        let mut out = Vec::new();
-        for u in 0..variables.len() {
-            for v in u..variables.len() {
-                let mut terms = Vec::new();
-                for &(a, b, node) in &entries {
-                    let (da, db) = (graph.derivative(a, variables[u]), graph.derivative(b, variables[v]));
-                    terms.push((graph.product(&[(da, 1.0), (db, 1.0), (node, 1.0)]), 1.0));
-                }
-                out.push((u, v, graph.sum(0.0, &terms)));
-            }
-        }
-        Ok(Some(out))
+        Ok(Some(chain(graph, &entries, variables)))
     }
 
     /// The raw values of a column of the graph for some rows.
     pub(super) fn raw(&self, column: u32, rows: &[usize]) -> Vec<f64> {
         let values = &self.rows.columns[column as usize].1;
         rows.iter().map(|&i| values[i]).collect()
+    }
+}
+
+/// Entries between nodes as entries between variables, by the chain rule; symmetric entries are given once.
+fn chain(graph: &mut Graph, entries: &[(Id, Id, Id)], variables: &[Variable]) -> Vec<(usize, usize, Id)> {
+    let zero = graph.constant(0.0);
+    let mut slopes: HashMap<Id, Vec<(usize, Id)>> = HashMap::new();
+    for &(a, b, _) in entries {
+        for node in [a, b] {
+            slopes.entry(node).or_insert_with(|| {
+                let all = variables.iter().enumerate().map(|(v, &by)| (v, graph.derivative(node, by)));
+                all.filter(|&(_, d)| d != zero).collect()
+            });
+        }
+    }
+    let mut sums: BTreeMap<(usize, usize), Vec<(Id, f64)>> = BTreeMap::new();
+    for &(a, b, node) in entries {
+        for &(u, du) in &slopes[&a] {
+            for &(v, dv) in &slopes[&b] {
+                let term = graph.product(&[(du, 1.0), (dv, 1.0), (node, 1.0)]);
+                // one place stands for both (u, v) and (v, u)
+                let twice = if a != b && u == v { 2.0 } else { 1.0 };
+                if a != b || u <= v {
+                    sums.entry((u.min(v), u.max(v))).or_default().push((term, twice));
+                }
+            }
+        }
+    }
+    sums.into_iter().map(|((u, v), terms)| (u, v, graph.sum(0.0, &terms))).collect()
+}
+
+/// log of the density, or of the probability of an interval, of a family in its scope.
+fn log_probability(
+    graph: &mut Graph,
+    f: &Family,
+    kind: RowKind,
+    (lower, upper): (Id, Id),
+    scope: &Scope,
+) -> Result<Id, LikelihoodError> {
+    if kind == RowKind::Exact {
+        return text_node(graph, f.log_density, scope, "model.family");
+    }
+    let Some(d) = &f.distribution else {
+        return Err(LikelihoodError::statement(
+            "model.family",
+            format!(
+                "{} has no distribution function here, so its response cannot be censored, binned or truncated",
+                f.name
+            ),
+            "give the response as exact values, or choose a family that has one",
+        ));
+    };
+    match kind {
+        RowKind::Above => tail(graph, d.above, scope, lower),
+        RowKind::Below => tail(graph, d.below, scope, upper),
+        _ => between(graph, d, scope, lower, upper),
     }
 }
 
@@ -296,7 +381,10 @@ fn between(graph: &mut Graph, d: &Distribution, scope: &Scope, lower: Id, upper:
 /// A tail of the distribution function at a node.
 fn tail(graph: &mut Graph, text: &str, scope: &Scope, at: Id) -> Result<Id, LikelihoodError> {
     let mut s = scope.clone();
-    s.insert("at", at);
+    s.insert("q", at);
+    if scope.node("at").is_none() {
+        s.insert("at", at);
+    }
     text_node(graph, text, &s, "model.family")
 }
 

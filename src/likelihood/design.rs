@@ -178,6 +178,7 @@ pub(super) fn keyed<T: Copy>(list: &[(Option<String>, T)], key: Option<&str>) ->
 /// Keys of a setting that are no coefficient's: mistakes to report. Under reference coding the first level is explained.
 pub(super) fn unknown_key(
     setting: &Setting,
+    own: Option<&str>,
     coefficients: &[Coefficient],
     terms: &Terms,
     table: &Table,
@@ -197,6 +198,14 @@ pub(super) fn unknown_key(
                     format!("write {list} = {{ {} = ... }}", coefficients[0].key),
                 ));
             };
+            // where the setting speaks of several row parameters, the others have their keys too
+            let Some(key) = (match own {
+                None => Some(key.clone()),
+                Some(own) => key.strip_prefix(own).and_then(|k| k.strip_prefix('.')).map(str::to_string),
+            }) else {
+                continue;
+            };
+            let key = &key;
             if coefficients.iter().any(|c| c.key.to_string() == *key) {
                 continue;
             }

@@ -14,6 +14,16 @@ pub struct Model {
     pub exposure: Option<String>,
     /// Number of trials (binomial): a column or a number; 1 when absent.
     pub trials: Option<Amount>,
+    /// Successes among what is drawn from (hypergeometric): a column or a number.
+    pub successes: Option<Amount>,
+    /// Failures among what is drawn from (hypergeometric): a column or a number.
+    pub failures: Option<Amount>,
+    /// Nothing at or below this could be recorded: a column or a number.
+    pub above: Option<Amount>,
+    /// Nothing at or above this could be recorded: a column or a number.
+    pub below: Option<Amount>,
+    /// `[model.support]`: which values the variables of a custom density take.
+    pub support: Vec<(String, Values)>,
     /// Marks rows whose response was seen; the others are right-censored.
     pub event: Option<Event>,
     /// Column whose levels each get a set of parameters.
@@ -43,8 +53,8 @@ pub enum Response {
         /// Column of upper ends.
         upper: String,
     },
-    /// Several label columns: cells of a table (categorical).
-    Labels(Vec<String>),
+    /// Several columns: labels that make the cells of a table, columns of shares, of numbers.
+    Several(Vec<String>),
 }
 
 /// A column or a number.
@@ -54,6 +64,17 @@ pub enum Amount {
     Column(String),
     /// The same number for every row.
     Number(f64),
+}
+
+/// The values that a variable of a custom density takes.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Values {
+    /// These.
+    List(Vec<f64>),
+    /// Whole numbers from the first to the second, which may be infinite.
+    Whole(f64, f64),
+    /// All numbers between two ends.
+    Interval(f64, f64),
 }
 
 /// Which rows were seen to happen.

@@ -7,6 +7,7 @@ use super::statement::Statement;
 use super::{LikelihoodError, Parameter};
 use crate::data::Table;
 use crate::expr::Name;
+use crate::family::Given;
 use crate::math::Range;
 
 /// The free parameters as they are numbered.
@@ -103,7 +104,10 @@ pub(super) fn number_locals(
             full_name(prefix, &l.local.name),
             range,
             pick(&|s| keyed(&s.start, key)),
-            pick(&|s| keyed(&s.known, key)),
+            pick(&|s| keyed(&s.known, key)).or(match l.given {
+                Given::KnownAs(x) => Some(x),
+                _ => None,
+            }),
             meaning,
             &l.place,
         )?);
@@ -130,8 +134,12 @@ pub(super) fn number_coefficients(
         let row = &statement.rows[p.local.row];
         let mut bound = Vec::new();
         for c in &p.coefficients {
-            let key = c.key.to_string();
-            let meaning = design::meaning(&row.name.to_string(), p.local.link, p.terms, table, c);
+            // a setting for several row parameters keys their coefficients by both
+            let key = match row.key.as_deref().and_then(|own| Name::parse(own).ok()) {
+                Some(own) => own.then(&c.key).to_string(),
+                None => c.key.to_string(),
+            };
+            let meaning = design::meaning(&row.name.to_string(), p.local.link, &p.terms, table, c);
             bound.push(numbering.enter(
                 full_name(prefix, &row.name.clone().then(&c.key)),
                 keyed(&p.setting.range, Some(&key)).unwrap_or(Range::ALL),

@@ -5,10 +5,10 @@ use super::compose::{Local, LocalPredictor, has_terms, uses};
 use super::design::{self, Coefficient, keyed};
 use super::model::{Form, Model, Setting, Terms};
 use super::rows::Rows;
-use super::statement::{Body, RowEntry, Statement};
+use super::statement::{Body, Statement};
 use crate::data::Table;
 use crate::expr::Name;
-use crate::family::Link;
+use crate::family::{Given, Link};
 use crate::math::Range;
 
 /// A scalar parameter with all that is said of it.
@@ -20,12 +20,14 @@ pub(super) struct LocalPlan<'m> {
     pub(super) meaning: String,
     /// Row parameter that it is, if it is one.
     pub(super) row: Option<usize>,
+    /// Whether it is estimated where the study says nothing.
+    pub(super) given: Given,
 }
 
 /// A predictor with all that is said of it.
 pub(super) struct PredictorPlan<'m> {
     pub(super) local: LocalPredictor,
-    pub(super) terms: &'m Terms,
+    pub(super) terms: Terms,
     pub(super) setting: &'m Setting,
     pub(super) place: String,
     pub(super) coefficients: Vec<Coefficient>,
@@ -67,69 +69,66 @@ pub(super) fn locals<'m>(
     table: &Table,
 ) -> Result<Vec<LocalPlan<'m>>, LikelihoodError> {
     let mut out: Vec<LocalPlan<'m>> = Vec::new();
-    let share = model.parameters.iter().find(|s| s.name == "share");
-    let share_names: Vec<Name> = match &statement.body {
-        Body::Categorical => rows.cells.clone(),
-        Body::Mixture(parts) => parts.iter().map(|(n, _)| Name::single("share").then(n)).collect(),
-        _ => Vec::new(),
-    };
-    if let Some(s) = share {
-        if s.form != Form::Plain {
-            return Err(LikelihoodError::statement(
-                "model.share",
-                "shares cannot have terms or a curve in this version",
-                "use per = \"COLUMN\" for shares that differ by level",
-            ));
-        }
-        for key in s
-            .start
-            .iter()
-            .map(|e| &e.0)
-            .chain(s.known.iter().map(|e| &e.0))
-            .chain(s.range.iter().map(|e| &e.0))
-            .flatten()
-        {
-            let Ok(name) = Name::parse(key) else { continue };
-            if !share_names.contains(&Name::single("share").then(&name)) {
-                let names: Vec<String> = share_names.iter().map(Name::to_string).collect();
+    if let Body::Mixture(parts) = &statement.body {
+        let share = model.parameters.iter().find(|s| s.name == "share");
+        let names: Vec<Name> = parts.iter().map(|(n, _)| n.clone()).collect();
+        if let Some(s) = share {
+            if s.form != Form::Plain {
                 return Err(LikelihoodError::statement(
                     "model.share",
-                    format!("no share is called share.{key}"),
-                    format!("there are {}", names.join(", ")),
+                    "the shares of a mixture cannot have terms or a curve",
+                    "use per = \"COLUMN\" for shares that differ by level",
                 ));
             }
+            check_keys(s, "share", &names, "model.share")?;
+        }
+        for name in names {
+            let key = name.to_string();
+            out.push(LocalPlan {
+                local: Local { name: Name::single("share").then(&name), range: Range::UNIT },
+                meaning: format!("share of component {key}"),
+                settings: share.map(|s| (s, Some(key))),
+                place: "model.share".into(),
+                shared: share.is_some_and(|s| s.shared),
+                row: None,
+                given: Given::Estimated,
+            });
         }
     }
-    for name in share_names {
-        let key: Vec<_> = name.pieces[1..].to_vec();
-        let key = Name { pieces: key }.to_string();
-        let what = match &statement.body {
-            Body::Categorical => format!("probability of {key}"),
-            _ => format!("share of component {key}"),
-        };
-        out.push(LocalPlan {
-            local: Local { name, range: Range::UNIT },
-            settings: share.map(|s| (s, Some(key))),
-            place: "model.share".into(),
-            shared: share.is_some_and(|s| s.shared),
-            meaning: what,
-            row: None,
-        });
+    if let Body::Composite(family, _, made) = &statement.body {
+        for (g, group) in family.groups.iter().enumerate() {
+            let keys: Vec<Name> = made.parameters.iter().filter(|p| p.group == g).map(|p| p.key.clone()).collect();
+            for s in model.parameters.iter().filter(|s| s.name == group.name && s.form == Form::Plain) {
+                check_keys(s, group.name, &keys, &format!("model.{}", s.name))?;
+            }
+        }
     }
     for (at, r) in statement.rows.iter().enumerate() {
         if r.curve.is_some() || has_terms(r.setting.map(|s| &s.form)) {
             continue;
         }
+        let known = r.setting.is_some_and(|s| !s.known.is_empty());
+        if r.about.given == Given::Known && !known {
+            return Err(LikelihoodError::statement(
+                if r.setting.is_some() { r.place.clone() } else { "model".into() },
+                format!("{} must be known: the likelihood cannot estimate it", r.name),
+                format!(
+                    "write {} = {{ known = VALUE }}",
+                    r.name.pieces.last().map_or("", |p| p.text.as_deref().unwrap_or(""))
+                ),
+            ));
+        }
         out.push(LocalPlan {
-            local: Local { name: r.name.clone(), range: range_of(r) },
-            settings: r.setting.map(|s| (s, None)),
+            local: Local { name: r.name.clone(), range: r.about.range },
+            settings: r.setting.map(|s| (s, r.key.clone())),
             place: r.place.clone(),
             shared: r.setting.is_some_and(|s| s.shared),
             meaning: match r.component {
                 Some(k) => format!("{} in component {}", r.about.meaning, model.components[k].name),
-                None => r.about.meaning.into(),
+                None => r.about.meaning.clone(),
             },
             row: Some(at),
+            given: r.about.given,
         });
     }
     for s in &statement.free {
@@ -172,14 +171,27 @@ pub(super) fn locals<'m>(
             shared: s.shared,
             meaning: "as in the formula".into(),
             row: None,
+            given: Given::Estimated,
         });
     }
     Ok(out)
 }
 
-/// The range of a plain parameter: what the study says, within the natural one.
-fn range_of(r: &RowEntry) -> Range {
-    r.setting.and_then(|s| keyed(&s.range, None)).unwrap_or(r.about.range)
+/// Keys of a setting that speaks of several parameters must name them.
+fn check_keys(s: &Setting, group: &str, names: &[Name], place: &str) -> Result<(), LikelihoodError> {
+    let keys = s.start.iter().map(|e| &e.0).chain(s.known.iter().map(|e| &e.0)).chain(s.range.iter().map(|e| &e.0));
+    for key in keys.flatten() {
+        let Ok(name) = Name::parse(key) else { continue };
+        if !names.contains(&name) {
+            let all: Vec<String> = names.iter().map(|n| Name::single(group).then(n).to_string()).collect();
+            return Err(LikelihoodError::statement(
+                place,
+                format!("no {group} is called {group}.{key}"),
+                format!("there are {}", all.join(", ")),
+            ));
+        }
+    }
+    Ok(())
 }
 
 pub(super) fn predictors<'m>(
@@ -204,8 +216,9 @@ pub(super) fn predictors<'m>(
                 })?
             }
         };
-        let coefficients = design::coefficients(terms, table, &r.place)?;
-        if let Some(e) = design::unknown_key(setting, &coefficients, terms, table, &r.place) {
+        let terms = Terms { intercept: terms.intercept && r.about.intercept, ..terms.clone() };
+        let coefficients = design::coefficients(&terms, table, &r.place)?;
+        if let Some(e) = design::unknown_key(setting, r.key.as_deref(), &coefficients, &terms, table, &r.place) {
             return Err(e);
         }
         out.push(PredictorPlan {

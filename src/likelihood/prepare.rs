@@ -9,21 +9,26 @@ use super::model::Model;
 use super::numbering::{Numbering, number_coefficients, number_locals};
 use super::part::{Part, Predictor};
 use super::plan::{Bound, check_levels, locals, predictors};
-use super::rows::{self, RowKind};
+use super::rows::{self, RowKind, Rows};
 use super::sample::{Mixture, Sample};
 use super::start::{self, Shape};
 use super::statement::{Body, Statement};
-use super::{Coordinates, LikelihoodError};
+use super::{Coordinates, LikelihoodError, labels};
 use crate::data::Table;
 use crate::expr::{Name, blocks};
+use crate::family::composite::{Composite, Layout, Reads};
 
 /// Prepares a likelihood.
 ///
 /// # Errors
 /// A statement that does not fit its family or the table; values that the response cannot take.
 pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> {
-    let statement = Statement::resolve(model)?;
-    let rows = rows::read(model, table, statement.support(), &statement.columns())?;
+    let layout = match Composite::named(&model.family) {
+        Some(family) => Some(labels::layout(model, family, table)?),
+        None => None,
+    };
+    let statement = Statement::resolve(model, layout)?;
+    let rows = rows::read(model, &statement, table)?;
     let locals = locals(model, &statement, &rows, table)?;
     let predictors = predictors(&statement, table)?;
     let template_locals: Vec<Local> = locals.iter().map(|l| l.local.clone()).collect();
@@ -145,7 +150,7 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
     let all_kinds_exact = rows.kinds.iter().all(|&k| k == RowKind::Exact);
     let concave = match &statement.body {
         Body::Density(f) => f.concave && !statement.rows.iter().any(|r| r.curve.is_some()),
-        Body::Categorical => true,
+        Body::Composite(f, ..) => f.concave && !statement.rows.iter().any(|r| r.curve.is_some()),
         Body::Mixture(_) => {
             locals
                 .iter()
@@ -155,18 +160,12 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         }
         Body::Custom(_) => false,
     };
-    let equations = match &statement.body {
-        Body::Categorical | Body::Mixture(_) => {
-            let pattern = match rows.cells.first().map_or(1, |c| c.pieces.len() - 1) {
-                2 => "share.*.*",
-                _ => "share.*",
-            };
-            match rows.levels.is_empty() {
-                true => vec![format!("sum({pattern}) = 1")],
-                false => {
-                    rows.levels.iter().map(|l| format!("sum({}.{pattern}) = 1", Name::single(l.as_str()))).collect()
-                }
-            }
+    let equations = equations(&statement, &rows)?;
+    // cells have expected counts where the shares are parameters themselves
+    let plain = |layout: &Layout| !layout.terms && !statement.rows.iter().any(|r| r.curve.is_some());
+    let cells = match &statement.body {
+        Body::Composite(f, layout, _) if f.reads == Reads::Labels && plain(layout) => {
+            bound_locals.iter().enumerate().map(|(l, b)| (level_weight(l), b.clone())).collect()
         }
         _ => Vec::new(),
     };
@@ -182,12 +181,40 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         equations,
         mixture,
         expected: all_kinds_exact,
-        cells: match &statement.body {
-            Body::Categorical => bound_locals.iter().enumerate().map(|(l, b)| (level_weight(l), b.clone())).collect(),
-            _ => Vec::new(),
-        },
+        cells,
         bins,
     })
+}
+
+/// The restrictions that the family maintains, once a level of `per`.
+fn equations(statement: &Statement, rows: &Rows) -> Result<Vec<String>, LikelihoodError> {
+    let own = match &statement.body {
+        Body::Mixture(_) => vec!["sum(share.*) = 1".to_string()],
+        Body::Composite(_, _, made) => {
+            // curves that make every share need no sum maintained; some alone would leave it without meaning
+            let curves = statement.rows.iter().filter(|r| r.curve.is_some()).count();
+            if curves > 0 && curves < statement.rows.len() && !made.equations.is_empty() {
+                return Err(LikelihoodError::statement(
+                    "model",
+                    format!(
+                        "{curves} of {} parameters are curves, and the family keeps the sum of all",
+                        statement.rows.len()
+                    ),
+                    "give each of them a curve, or none",
+                ));
+            }
+            if curves > 0 { Vec::new() } else { made.equations.clone() }
+        }
+        _ => Vec::new(),
+    };
+    if rows.levels.is_empty() {
+        return Ok(own);
+    }
+    let each = |l: &String| {
+        let level = Name::single(l.as_str());
+        own.iter().map(move |e| e.replace("sum(", &format!("sum({level}."))).collect::<Vec<_>>()
+    };
+    Ok(rows.levels.iter().flat_map(each).collect())
 }
 
 fn mixture(shape: &Shape, levels: usize) -> Option<Mixture> {

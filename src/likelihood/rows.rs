@@ -1,12 +1,12 @@
 //! The rows a likelihood is computed from: the table's, or for labels one row a cell with its count; each of one kind.
 
-use std::collections::HashMap;
-
 use super::LikelihoodError;
+use super::compose::has_terms;
 use super::model::{Amount, Model, Response};
+use super::statement::{Body, Statement};
+use super::{labels, response};
 use crate::data::{Table, Values};
-use crate::expr::Name;
-use crate::family::{Moments, Support};
+use crate::family::Moments;
 
 /// What is known of the response in a row.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -37,14 +37,15 @@ pub(super) struct Rows {
     pub(super) weights: Option<Vec<f64>>,
     /// Columns by key, in the order of their graph index.
     pub(super) columns: Vec<(String, Vec<f64>)>,
-    /// Labels of a categorical response, one cell a name.
-    pub(super) cells: Vec<Name>,
 }
 
 /// Keys of the columns that are no column of the table (those are keyed by their name after a space).
 pub(super) const Y: &str = "y";
 pub(super) const LOWER: &str = "lower";
 pub(super) const UPPER: &str = "upper";
+/// Ends of what could be recorded, as arguments of the distribution function.
+pub(super) const FROM: &str = "from";
+pub(super) const UPTO: &str = "upto";
 
 /// The key of a table column.
 pub(super) fn table_key(name: &str) -> String {
@@ -56,8 +57,13 @@ impl Rows {
         self.columns.iter().position(|c| c.0 == key).map(|i| (i as u32, &self.columns[i].1[..]))
     }
 
-    fn push(&mut self, key: impl Into<String>, values: Vec<f64>) {
+    pub(super) fn push(&mut self, key: impl Into<String>, values: Vec<f64>) {
         self.columns.push((key.into(), values));
+    }
+
+    /// Whether only a part of the values could be recorded.
+    pub(super) fn truncated(&self) -> bool {
+        self.column(FROM).is_some() || self.column(UPTO).is_some()
     }
 
     pub(super) fn weight(&self, row: usize) -> f64 {
@@ -92,7 +98,7 @@ impl Rows {
     }
 }
 
-fn numbers<'t>(table: &'t Table, name: &str, place: &str) -> Result<&'t [f64], LikelihoodError> {
+pub(super) fn numbers<'t>(table: &'t Table, name: &str, place: &str) -> Result<&'t [f64], LikelihoodError> {
     match table.column(name).map(|c| &c.values) {
         Some(Values::Number(x)) => Ok(x),
         Some(Values::Category { .. }) => Err(LikelihoodError::statement(
@@ -113,7 +119,7 @@ fn numbers<'t>(table: &'t Table, name: &str, place: &str) -> Result<&'t [f64], L
 }
 
 /// A fault in a cell, with its place in the file.
-fn fault(table: &Table, row: usize, column: &str, found: f64, wanted: &str) -> LikelihoodError {
+pub(super) fn fault(table: &Table, row: usize, column: &str, found: f64, wanted: &str) -> LikelihoodError {
     let file = if table.file.is_empty() { "the data" } else { &table.file };
     LikelihoodError::Data(format!(
         "{file}, line {}, column {column}: found {found}, expected {wanted}",
@@ -121,17 +127,12 @@ fn fault(table: &Table, row: usize, column: &str, found: f64, wanted: &str) -> L
     ))
 }
 
-/// Reads the rows of a table as the model sees them. `expressions` are the columns that texts of the model name.
+/// Reads the rows of a table as the model sees them.
 ///
 /// # Errors
 /// Missing columns; values that the response cannot take.
-pub(super) fn read(
-    model: &Model,
-    table: &Table,
-    support: Option<Support>,
-    expressions: &[String],
-) -> Result<Rows, LikelihoodError> {
-    let mut rows = columns(model, table, support, expressions)?;
+pub(super) fn read(model: &Model, statement: &Statement, table: &Table) -> Result<Rows, LikelihoodError> {
+    let mut rows = columns(model, statement, table)?;
     rows.members = vec![Vec::new(); rows.levels.len().max(1)];
     for (i, &level) in rows.level.iter().enumerate() {
         rows.members[level as usize].push(i);
@@ -140,12 +141,7 @@ pub(super) fn read(
     Ok(rows)
 }
 
-fn columns(
-    model: &Model,
-    table: &Table,
-    support: Option<Support>,
-    expressions: &[String],
-) -> Result<Rows, LikelihoodError> {
+fn columns(model: &Model, statement: &Statement, table: &Table) -> Result<Rows, LikelihoodError> {
     let mut rows = Rows { count: table.rows, weights: table.weights.clone(), ..Rows::default() };
     rows.kinds = vec![RowKind::Exact; table.rows];
     match &model.per {
@@ -168,74 +164,73 @@ fn columns(
             }
         },
     }
-    if model.family == "categorical" {
-        return cells(model, table, rows);
+    let expressions = statement.columns();
+    if let Body::Composite(family, layout, _) = &statement.body {
+        let alike = expressions.is_empty() && !statement.rows.iter().any(|r| has_terms(r.setting.map(|s| &s.form)));
+        rows = labels::read(model, family, layout, table, rows, alike)?;
+        if alike {
+            return Ok(rows);
+        }
+    } else {
+        single(&mut rows, model, statement, table)?;
+    }
+    for name in &expressions {
+        let values = match table.column(name).map(|c| &c.values) {
+            Some(Values::Number(x)) => x.clone(),
+            Some(Values::Category { codes, .. }) => codes.iter().map(|&c| f64::from(c)).collect(),
+            None => continue,
+        };
+        rows.push(table_key(name), values);
+    }
+    Ok(rows)
+}
+
+/// A response of one column or of two ends, with its amounts.
+fn single(rows: &mut Rows, model: &Model, statement: &Statement, table: &Table) -> Result<(), LikelihoodError> {
+    let custom = matches!(statement.body, Body::Custom(_));
+    for (what, own, amount, place) in amounts(model) {
+        let (key, name) = match (amount, own) {
+            (Amount::Number(_), _) => continue,
+            (Amount::Column(name), None) => (what.to_string(), name),
+            (Amount::Column(name), Some(component)) => (format!("{what} of {component}"), name),
+        };
+        let x = numbers(table, &name, &place)?;
+        let (ok, words): (fn(f64) -> bool, &str) = match what {
+            "exposure" => (|v| v > 0.0 && v.is_finite(), "a number above 0"),
+            _ => (|v| v >= 0.0 && v.fract() == 0.0, "a whole number, 0 or more"),
+        };
+        if let Some(row) = x.iter().position(|&v| !ok(v)) {
+            return Err(fault(table, row, &name, x[row], words));
+        }
+        rows.push(key, x.to_vec());
     }
     match &model.response {
         Response::None => {}
-        Response::Labels(_) => {
+        Response::Several(list) if custom => {
+            for name in list {
+                if table.column(name).is_none() {
+                    numbers(table, name, "model.response")?;
+                }
+            }
+        }
+        Response::Several(_) => {
             return Err(LikelihoodError::statement(
                 "model.response",
                 format!("{} takes one column, not a list", model.family),
                 "",
             ));
         }
-        Response::Column(name) if support.is_some() => {
-            let y = numbers(table, name, "model.response")?.to_vec();
-            check(table, name, &y, support)?;
-            rows.push(Y, y);
-        }
-        Response::Column(name) => {
-            numbers(table, name, "model.response")?;
-        }
-        Response::Ends { lower, upper } => ends(&mut rows, table, lower, upper, support)?,
-    }
-    let sized = |rows: &mut Rows, key: &str, name: &str, place: &str| -> Result<(), LikelihoodError> {
-        let x = numbers(table, name, place)?;
-        if let Some(row) = x.iter().position(|&v| !(v > 0.0 && v.is_finite())) {
-            return Err(fault(table, row, name, x[row], "a number above 0"));
-        }
-        rows.push(key, x.to_vec());
-        Ok(())
-    };
-    if let Some(name) = &model.exposure {
-        sized(&mut rows, "exposure", name, "model.exposure")?;
-    }
-    if let Some(Amount::Column(name)) = &model.trials {
-        let n = numbers(table, name, "model.trials")?.to_vec();
-        if let Some(row) = n.iter().position(|&v| !(v >= 0.0 && v.fract() == 0.0)) {
-            return Err(fault(table, row, name, n[row], "a whole number, 0 or more"));
-        }
-        rows.push("trials", n);
-    }
-    for (at, component) in model.components.iter().enumerate() {
-        if let Some(name) = &component.exposure {
-            sized(
-                &mut rows,
-                &format!("exposure of {}", component.name),
-                name,
-                &format!("model.component.{at}.exposure"),
-            )?;
-        }
-        if let Some(Amount::Column(name)) = &component.trials {
-            let n = numbers(table, name, &format!("model.component.{at}.trials"))?.to_vec();
-            rows.push(format!("trials of {}", component.name), n);
-        }
-    }
-    if support == Some(Support::CountOfTrials)
-        && let (Some((_, y)), Response::Column(name)) = (rows.column(Y), &model.response)
-    {
-        let trials = rows.column("trials").map(|c| c.1);
-        let fixed = match &model.trials {
-            Some(Amount::Number(n)) => *n,
-            _ => 1.0,
-        };
-        for (row, &y) in y.iter().enumerate() {
-            let n = trials.map_or(fixed, |t| t[row]);
-            if y > n {
-                return Err(fault(table, row, name, y, &format!("at most the number of trials, {n}")));
+        Response::Column(name) if custom => {
+            if table.column(name).is_none() {
+                numbers(table, name, "model.response")?;
             }
         }
+        Response::Column(name) => {
+            let y = numbers(table, name, "model.response")?.to_vec();
+            response::check(rows, model, statement, table, name, &y, None)?;
+            rows.push(Y, y);
+        }
+        Response::Ends { lower, upper } => response::ends(rows, model, statement, table, lower, upper)?,
     }
     if let Some(event) = &model.event {
         let seen = events(table, &event.column, event.seen.as_deref())?;
@@ -250,76 +245,30 @@ fn columns(
         rows.kinds = seen.iter().map(|&s| if s { RowKind::Exact } else { RowKind::Above }).collect();
         rows.push(LOWER, y);
     }
-    for name in expressions {
-        let values = match table.column(name).map(|c| &c.values) {
-            Some(Values::Number(x)) => x.clone(),
-            Some(Values::Category { codes, .. }) => codes.iter().map(|&c| f64::from(c)).collect(),
-            None => continue,
-        };
-        rows.push(table_key(name), values);
+    if !custom {
+        response::truncate(rows, model, statement, table)?;
     }
-    Ok(rows)
-}
-
-fn check(table: &Table, name: &str, y: &[f64], support: Option<Support>) -> Result<(), LikelihoodError> {
-    let (ok, words): (fn(f64) -> bool, &str) = match support {
-        Some(Support::Nonnegative) => (|y| y >= 0.0 && y.is_finite(), "a number, 0 or more"),
-        Some(Support::Positive) => (|y| y > 0.0 && y.is_finite(), "a number above 0"),
-        Some(Support::Unit) => (|y| y > 0.0 && y < 1.0, "a number above 0 and below 1"),
-        Some(Support::CountFromOne) => (|y| y >= 1.0 && y.fract() == 0.0, "a whole number, 1 or more"),
-        Some(Support::Count | Support::CountOfTrials) => {
-            (|y| y >= 0.0 && y.fract() == 0.0, "a whole number, 0 or more")
-        }
-        Some(Support::Real | Support::From(_)) | None => (f64::is_finite, "a finite number"),
-    };
-    match y.iter().position(|&v| !ok(v)) {
-        Some(row) => Err(fault(table, row, name, y[row], words)),
-        None => Ok(()),
-    }
-}
-
-fn ends(
-    rows: &mut Rows,
-    table: &Table,
-    lower_name: &str,
-    upper_name: &str,
-    support: Option<Support>,
-) -> Result<(), LikelihoodError> {
-    let mut lower = numbers(table, lower_name, "model.response_lower")?.to_vec();
-    let upper = numbers(table, upper_name, "model.response_upper")?.to_vec();
-    for i in 0..rows.count {
-        if lower[i].is_nan() || upper[i].is_nan() || (lower[i] == f64::NEG_INFINITY && upper[i] == f64::INFINITY) {
-            return Err(fault(table, i, lower_name, lower[i], "one end at least that is not open"));
-        }
-        if lower[i] > upper[i] {
-            return Err(fault(table, i, lower_name, lower[i], &format!("at most the upper end, {}", upper[i])));
-        }
-        // nothing lies below the support
-        if support == Some(Support::Nonnegative) {
-            if upper[i] < 0.0 {
-                return Err(fault(table, i, upper_name, upper[i], "a number, 0 or more"));
-            }
-            lower[i] = lower[i].max(0.0);
-        }
-    }
-    let closed = support == Some(Support::Nonnegative);
-    rows.kinds = (0..rows.count)
-        .map(|i| {
-            if lower[i] == upper[i] {
-                RowKind::Exact
-            } else if upper[i] == f64::INFINITY {
-                RowKind::Above
-            } else if lower[i] == f64::NEG_INFINITY || (closed && lower[i] == 0.0) {
-                RowKind::Below
-            } else {
-                RowKind::Between
-            }
-        })
-        .collect();
-    rows.push(Y, upper.clone());
-    rows.push(LOWER, lower);
-    rows.push(UPPER, upper);
     Ok(())
+}
+
+/// All amounts of the model: what, of which component, column or number, place in the study.
+fn amounts(model: &Model) -> Vec<(&'static str, Option<&str>, Amount, String)> {
+    let exposure = |e: &Option<String>| e.as_ref().map(|c| Amount::Column(c.clone()));
+    let mut out = Vec::new();
+    for (what, amount) in [
+        ("exposure", exposure(&model.exposure)),
+        ("trials", model.trials.clone()),
+        ("successes", model.successes.clone()),
+        ("failures", model.failures.clone()),
+    ] {
+        out.extend(amount.map(|a| (what, None, a, format!("model.{what}"))));
+    }
+    for (k, c) in model.components.iter().enumerate() {
+        for (what, amount) in [("exposure", exposure(&c.exposure)), ("trials", c.trials.clone())] {
+            out.extend(amount.map(|a| (what, Some(c.name.as_str()), a, format!("model.component.{k}.{what}"))));
+        }
+    }
+    out
 }
 
 fn events(table: &Table, column: &str, seen: Option<&str>) -> Result<Vec<bool>, LikelihoodError> {
@@ -360,65 +309,4 @@ fn events(table: &Table, column: &str, seen: Option<&str>) -> Result<Vec<bool>, 
         }
         (None, _) => numbers(table, column, "model.event").map(|_| Vec::new()),
     }
-}
-
-/// Labels: one row a cell and level of `per`, with the total weight of the cell.
-fn cells(model: &Model, table: &Table, rows: Rows) -> Result<Rows, LikelihoodError> {
-    let names: Vec<&str> = match &model.response {
-        Response::Column(c) => vec![c],
-        Response::Labels(list) => list.iter().map(String::as_str).collect(),
-        _ => Vec::new(),
-    };
-    if names.is_empty() {
-        return Err(LikelihoodError::statement(
-            "model.response",
-            "categorical needs a response: a column of labels, or a list of them",
-            "write response = \"COLUMN\"",
-        ));
-    }
-    let mut codes = vec![0usize; table.rows];
-    let mut cells: Vec<Name> = vec![Name::single("share")];
-    for name in names {
-        let (own, levels): (Vec<u32>, Vec<String>) = match table.column(name).map(|c| &c.values) {
-            Some(Values::Category { codes, levels }) => (codes.clone(), levels.clone()),
-            _ => {
-                let x = numbers(table, name, "model.response")?;
-                let mut sorted = x.to_vec();
-                sorted.sort_by(f64::total_cmp);
-                sorted.dedup();
-                let own = x.iter().map(|v| sorted.partition_point(|s| s < v) as u32).collect();
-                (own, sorted.iter().map(f64::to_string).collect())
-            }
-        };
-        codes.iter_mut().zip(&own).for_each(|(c, &o)| *c = *c * levels.len() + o as usize);
-        cells =
-            cells.iter().flat_map(|c| levels.iter().map(|l| c.clone().dot(l.as_str())).collect::<Vec<_>>()).collect();
-    }
-    if cells.len() > 2_000 {
-        return Err(LikelihoodError::statement(
-            "model.response",
-            format!("there are {} different labels or cells, more than 2000", cells.len()),
-            "is this really a category? join rare labels first",
-        ));
-    }
-    let mut totals: HashMap<(u32, usize), f64> = HashMap::new();
-    for (row, &code) in codes.iter().enumerate() {
-        *totals.entry((rows.level[row], code)).or_default() += rows.weight(row);
-    }
-    let mut keys: Vec<(u32, usize)> = totals.keys().copied().collect();
-    keys.sort_unstable();
-    let mut out = Rows {
-        count: keys.len(),
-        kinds: vec![RowKind::Exact; keys.len()],
-        level: keys.iter().map(|k| k.0).collect(),
-        levels: rows.levels,
-        weights: Some(keys.iter().map(|k| totals[k]).collect()),
-        cells,
-        ..Rows::default()
-    };
-    for cell in 0..out.cells.len() {
-        let indicator = keys.iter().map(|k| f64::from(u8::from(k.1 == cell))).collect();
-        out.push(format!("cell {cell}"), indicator);
-    }
-    Ok(out)
 }

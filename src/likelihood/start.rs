@@ -5,8 +5,9 @@ use super::model::Model;
 use super::plan::{Bound, LocalPlan, PredictorPlan};
 use super::rows::{RowKind, Rows};
 use super::statement::{Body, Statement};
-use super::{Coordinates, Parameter};
+use super::{Coordinates, Parameter, labels};
 use crate::expr::{Graph, Name, Scalars, Scope, build, parse_expression};
+use crate::family::composite::{Composite, Layout};
 use crate::family::{Family, Link, Moments};
 use crate::math::linear::positive_definite_inverse;
 use crate::math::{Matrix, Vector, special};
@@ -33,23 +34,11 @@ const EM_STEPS: usize = 15;
 /// The first starting point; what the study states stands as stated.
 pub(super) fn theta(shape: &Shape, parameters: &[Parameter], stated: &[Option<f64>]) -> Vector {
     let mut phi = Vector::zeros(parameters.len());
-    for (level, bound) in shape.bound_locals.iter().enumerate() {
+    for level in 0..shape.bound_locals.len() {
         let members = &shape.rows.members[level];
         match &shape.statement.body {
             Body::Density(f) => density(shape, f, level, members, &mut phi),
-            Body::Categorical => {
-                let total: f64 = members.iter().map(|&i| shape.rows.weight(i)).sum();
-                let k = bound.len() as f64;
-                for (cell, b) in bound.iter().enumerate() {
-                    let count: f64 = members
-                        .iter()
-                        .filter(|&&i| shape.rows.columns[cell].1[i] == 1.0)
-                        .map(|&i| shape.rows.weight(i))
-                        .sum();
-                    // half a row in each cell keeps the start inside
-                    set(&mut phi, *b, (count + 0.5) / (total + 0.5 * k));
-                }
-            }
+            Body::Composite(f, layout, _) => composite(shape, f, layout, level, members, &mut phi),
             Body::Mixture(parts) => mixture(shape, parts, level, members, &mut phi),
             Body::Custom(_) => {}
         }
@@ -64,6 +53,20 @@ pub(super) fn theta(shape: &Shape, parameters: &[Parameter], stated: &[Option<f6
         theta[i] = inside(theta[i], p);
     }
     theta
+}
+
+fn composite(shape: &Shape, f: &Composite, layout: &Layout, level: usize, members: &[usize], phi: &mut Vector) {
+    let values = (f.start)(layout, &labels::summary(f, layout, shape.rows, members));
+    for (k, p) in shape.predictors.iter().enumerate() {
+        if let Some(&v) = values.get(p.local.row) {
+            constant(shape, level, k, v, phi);
+        }
+    }
+    for (l, b) in shape.locals.iter().zip(&shape.bound_locals[level]) {
+        if let Some(&v) = l.row.and_then(|row| values.get(row)) {
+            set(phi, *b, v);
+        }
+    }
 }
 
 fn set(phi: &mut Vector, bound: Bound, value: f64) {

@@ -3,24 +3,25 @@
 use super::LikelihoodError;
 use super::compose::has_terms;
 use super::model::{Amount, Form, Model, Response};
-use super::statement::Statement;
+use super::statement::{Body, Statement};
 use crate::data::{Pair, Sort, Wanted};
 use crate::expr::parse_expression;
 use crate::family::Support;
+use crate::family::composite::Reads;
 
 /// The columns in use and the relations between them.
 ///
 /// # Errors
 /// A statement that does not fit its family.
 pub fn wanted(model: &Model) -> Result<(Vec<Wanted>, Vec<Pair>), LikelihoodError> {
-    let statement = Statement::resolve(model)?;
-    let support = statement.support();
-    let of_support = match support {
-        Some(Support::Nonnegative) => Sort::Nonnegative,
-        Some(Support::Positive) => Sort::Positive,
-        Some(Support::Count | Support::CountFromOne | Support::CountOfTrials) => Sort::Count,
-        Some(Support::Real | Support::Unit | Support::From(_)) | None => Sort::Number,
-    };
+    let statement = Statement::resolve(model, None)?;
+    // a mixture takes what one of its components takes
+    let of_support = statement.supports().into_iter().map(sort).reduce(|a, b| match (a, b) {
+        (a, b) if a == b => a,
+        (Sort::Number, _) | (_, Sort::Number) => Sort::Number,
+        _ => Sort::Nonnegative,
+    });
+    let of_support = of_support.unwrap_or(Sort::Number);
     let (mut out, mut pairs) = (Vec::new(), Vec::new());
     let mut want = |name: &str, sort: Sort| {
         let w = Wanted::new(name, sort);
@@ -28,11 +29,19 @@ pub fn wanted(model: &Model) -> Result<(Vec<Wanted>, Vec<Pair>), LikelihoodError
             out.push(w);
         }
     };
-    let categorical = model.family == "categorical";
+    let response = match &statement.body {
+        Body::Composite(f, ..) => match f.reads {
+            Reads::Labels | Reads::OrderedLabels | Reads::Contest => Sort::Category,
+            Reads::Numbers => Sort::Number,
+            Reads::Shares => Sort::Positive,
+        },
+        Body::Custom(_) => Sort::Either,
+        Body::Density(_) | Body::Mixture(_) => of_support,
+    };
     match &model.response {
         Response::None => {}
-        Response::Column(c) => want(c, if categorical { Sort::Category } else { of_support }),
-        Response::Labels(list) => list.iter().for_each(|c| want(c, Sort::Category)),
+        Response::Column(c) => want(c, response),
+        Response::Several(list) => list.iter().for_each(|c| want(c, response)),
         Response::Ends { lower, upper } => {
             want(lower, Sort::LowerEnd);
             want(upper, Sort::UpperEnd);
@@ -46,6 +55,16 @@ pub fn wanted(model: &Model) -> Result<(Vec<Wanted>, Vec<Pair>), LikelihoodError
         want(n, Sort::Count);
         if let Response::Column(y) = &model.response {
             pairs.push(Pair::AtMost { count: y.clone(), trials: n.clone() });
+        }
+    }
+    for amount in [&model.successes, &model.failures] {
+        if let Some(Amount::Column(n)) = amount {
+            want(n, Sort::Count);
+        }
+    }
+    for amount in [&model.above, &model.below] {
+        if let Some(Amount::Column(n)) = amount {
+            want(n, Sort::Number);
         }
     }
     for c in &model.components {
@@ -79,4 +98,14 @@ pub fn wanted(model: &Model) -> Result<(Vec<Wanted>, Vec<Pair>), LikelihoodError
         }
     }
     Ok((out, pairs))
+}
+
+/// What the reader must find in a column of responses.
+fn sort(support: Support) -> Sort {
+    match support {
+        Support::Nonnegative => Sort::Nonnegative,
+        Support::Positive => Sort::Positive,
+        Support::Count | Support::CountFromOne | Support::CountOfTrials | Support::Draws => Sort::Count,
+        Support::Real | Support::Unit | Support::From(_) => Sort::Number,
+    }
 }

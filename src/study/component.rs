@@ -2,8 +2,9 @@
 
 use super::fault::Fault;
 use super::model::amount;
-use super::node::{Node, Table, Value};
+use super::node::{Entry, Node, Table, Value, unknown};
 use super::parameter;
+use crate::expr::Name;
 use crate::likelihood::model::{Component, Setting};
 
 const KEYS: &[&str] = &["name", "family", "start", "known", "range", "trials", "exposure"];
@@ -26,13 +27,20 @@ pub fn components(node: &Node) -> Result<Vec<Component>, Fault> {
 }
 
 fn component(table: &Table, member: &Node) -> Result<Component, Fault> {
-    table.only("[[model.component]]", KEYS)?;
+    // a table of its own for a parameter: terms, a curve, a link
+    let own = |e: &&Entry| !KEYS.contains(&e.key.as_str()) && matches!(e.node.value, Value::Table(_));
+    if let Some(e) = table.0.iter().find(|e| !own(e) && !KEYS.contains(&e.key.as_str())) {
+        return Err(unknown(e, "[[model.component]]", KEYS));
+    }
     let need = |key: &str, example: &str| match table.node(key) {
         Some(node) => node.text(key, "a text"),
         None => Err(Fault::at(member.at, format!("a component has no {key}")).advise(format!("add {key} = {example}"))),
     };
     let (name, family) = (need("name", "\"north\"")?, need("family", "\"normal\"")?);
     let mut parameters: Vec<Setting> = Vec::new();
+    for e in table.0.iter().filter(own) {
+        parameters.push(parameter::setting(&Name::single(e.key.as_str()), &e.key, &e.node, false)?);
+    }
     for group in table.0.iter().filter(|e| ["start", "known", "range"].contains(&e.key.as_str())) {
         let key = group.key.as_str();
         let by_name = group.node.table(key, "values by parameter, such as { mean = 3 }")?;

@@ -10,8 +10,9 @@ use crate::math::Range;
 pub const KEYS: &[&str] =
     &["terms", "link", "intercept", "coding", "offset", "curve", "start", "known", "range", "shared"];
 
-/// Reads the table of a parameter; with `per` one table may hold a table for each parameter of one level.
-pub fn settings(entry: &Entry, per: bool) -> Result<Vec<Setting>, Fault> {
+/// Reads the table of a parameter; with `per` one table may hold a table for each parameter of one level, and a `group` that the
+/// data make may hold a table for each of its parts.
+pub fn settings(entry: &Entry, per: bool, group: bool) -> Result<Vec<Setting>, Fault> {
     let name = Name::single(entry.key.as_str());
     let table = match &entry.node.value {
         Value::Table(table) => table,
@@ -28,10 +29,13 @@ pub fn settings(entry: &Entry, per: bool) -> Result<Vec<Setting>, Fault> {
             return Err(unknown(entry, "[model]", &keys));
         }
     };
-    let level = !table.0.is_empty()
-        && table.0.iter().all(|e| !KEYS.contains(&e.key.as_str()) && matches!(e.node.value, Value::Table(_)));
-    if level && per {
-        return table.0.iter().map(|e| setting(&name.clone().dot(e.key.as_str()), &e.key, &e.node, true)).collect();
+    let level = holds_tables(table);
+    if level && (per || group) {
+        let mut out = Vec::new();
+        for e in &table.0 {
+            parts(&name.clone().dot(e.key.as_str()), e, per, &mut out)?;
+        }
+        return Ok(out);
     }
     if level {
         let inner = &table.0[0];
@@ -42,7 +46,26 @@ pub fn settings(entry: &Entry, per: bool) -> Result<Vec<Setting>, Fault> {
     Ok(vec![setting(&name, &entry.key, &entry.node, per)?])
 }
 
-fn setting(name: &Name, key: &str, node: &Node, per: bool) -> Result<Setting, Fault> {
+/// Whether a table holds nothing but tables under names that are no settings.
+fn holds_tables(table: &Table) -> bool {
+    !table.0.is_empty()
+        && table.0.iter().all(|e| !KEYS.contains(&e.key.as_str()) && matches!(e.node.value, Value::Table(_)))
+}
+
+fn parts(name: &Name, entry: &Entry, per: bool, out: &mut Vec<Setting>) -> Result<(), Fault> {
+    match &entry.node.value {
+        Value::Table(table) if holds_tables(table) => {
+            for e in &table.0 {
+                parts(&name.clone().dot(e.key.as_str()), e, per, out)?;
+            }
+        }
+        _ => out.push(setting(name, &entry.key, &entry.node, per)?),
+    }
+    Ok(())
+}
+
+/// Reads the table of one parameter.
+pub fn setting(name: &Name, key: &str, node: &Node, per: bool) -> Result<Setting, Fault> {
     let table = node.table(key, "settings")?;
     table.only(&format!("[model.{key}]"), KEYS)?;
     let mut setting = Setting { name: name.to_string(), form: form(table)?, ..Setting::default() };

@@ -171,7 +171,7 @@ fn wrong_studies_say_where_and_what_to_do() {
         (format!("{normal}response_lower='l'\n"), vec!["not response and response_lower"]),
         (format!("{data}[model]\nfamily='normal'\nresponse_lower='l'\n"), vec!["needs response_upper beside it"]),
         (format!("{data}[model]\nresponse='y'\n"), vec!["dir/s.toml: the study names no family"]),
-        (format!("{normal}above=3\n"), vec!["does not know truncation"]),
+        (format!("{normal}support={{y='0..'}}\n"), vec!["support belongs to the family custom"]),
         (format!("{normal}[[model.component]]\nname='a'\nfamily='normal'\n"), vec!["belong to the family mixture"]),
         (format!("{normal}[options]\nstarts=0\n"), vec!["starts must be a whole number of at least 1, not 0"]),
         (format!("{normal}[options]\nstrats=3\n"), vec!["nearest name: starts"]),
