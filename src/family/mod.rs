@@ -2,19 +2,31 @@
 
 pub mod binomial;
 pub mod categorical;
+pub mod cauchy;
 #[cfg(test)]
 mod checks;
 pub mod composite;
 pub mod dirichlet;
 pub mod exponential;
+pub mod gumbel;
+pub mod gumbel_smallest;
+pub mod half_normal;
+pub mod inverse_gaussian;
+pub mod laplace;
 pub mod link;
 pub mod listing;
+pub mod log_logistic;
+pub mod logistic;
+pub mod lognormal;
 pub mod multivariate_normal;
 pub mod normal;
 pub mod ordered;
 pub mod paired_comparison;
+pub mod pareto;
 pub mod point;
 pub mod poisson;
+pub mod rayleigh;
+pub mod weibull;
 
 pub use composite::{COMPOSITES, Composite};
 pub use link::Link;
@@ -33,6 +45,8 @@ pub enum Support {
     Positive,
     /// Numbers > 0 and < 1.
     Unit,
+    /// Any finite number, of which 2 pi more is the same.
+    Angle,
     /// Numbers at or above the known row parameter of this name.
     From(&'static str),
     /// Whole numbers >= 0.
@@ -218,7 +232,25 @@ impl Moments {
 }
 
 /// The table: a new family is a room of its own and a row here.
-pub const FAMILIES: &[&Family] = &[&binomial::BINOMIAL, &exponential::EXPONENTIAL, &normal::NORMAL, &poisson::POISSON];
+pub const FAMILIES: &[&Family] = &[
+    &binomial::BINOMIAL,
+    &cauchy::CAUCHY,
+    &exponential::EXPONENTIAL,
+    &gumbel::GUMBEL,
+    &gumbel_smallest::GUMBEL_SMALLEST,
+    &half_normal::HALF_NORMAL,
+    &inverse_gaussian::INVERSE_GAUSSIAN,
+    &laplace::LAPLACE,
+    &log_logistic::LOG_LOGISTIC,
+    &logistic::LOGISTIC,
+    &lognormal::LOGNORMAL,
+    &normal::NORMAL,
+    &pareto::PARETO,
+    &point::POINT,
+    &poisson::POISSON,
+    &rayleigh::RAYLEIGH,
+    &weibull::WEIBULL,
+];
 
 impl Family {
     /// The family of this name.

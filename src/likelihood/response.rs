@@ -18,7 +18,7 @@ fn allowed(support: Support) -> (fn(f64) -> bool, &'static str) {
         Support::Count | Support::CountOfTrials | Support::Draws => {
             (|y| y >= 0.0 && y.fract() == 0.0, "a whole number, 0 or more")
         }
-        Support::Real | Support::From(_) => (f64::is_finite, "a finite number"),
+        Support::Real | Support::Angle | Support::From(_) => (f64::is_finite, "a finite number"),
     }
 }
 
@@ -91,7 +91,7 @@ pub(super) fn ends(
     let mut lower = numbers(table, lower_name, "model.response_lower")?.to_vec();
     let mut upper = numbers(table, upper_name, "model.response_upper")?.to_vec();
     let supports = statement.supports();
-    let bounded = !supports.is_empty() && !supports.iter().any(|s| matches!(s, Support::Real | Support::From(_)));
+    let bounded = !supports.is_empty() && !supports.iter().any(|s| matches!(s, Support::Real | Support::Angle | Support::From(_)));
     let counts = statement.counts();
     let mut exact = vec![false; rows.count];
     for i in 0..rows.count {

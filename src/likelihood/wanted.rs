@@ -106,6 +106,6 @@ fn sort(support: Support) -> Sort {
         Support::Nonnegative => Sort::Nonnegative,
         Support::Positive => Sort::Positive,
         Support::Count | Support::CountFromOne | Support::CountOfTrials | Support::Draws => Sort::Count,
-        Support::Real | Support::Unit | Support::From(_) => Sort::Number,
+        Support::Real | Support::Angle | Support::Unit | Support::From(_) => Sort::Number,
     }
 }
