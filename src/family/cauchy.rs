@@ -18,7 +18,7 @@ pub const CAUCHY: Family = Family {
         ),
     ],
     amounts: &[],
-    log_density: "-log(pi * scale) - log1p(((y - location) / scale)^2)",
+    log_density: "log(scale) - log(pi) - log(scale^2 + (y - location)^2)",
     distribution: Some(Distribution {
         // beyond one scale from the median the reciprocal keeps the digits of the tail
         below: "if(at < location - scale, log(atan(scale / (location - at)) / pi), \

@@ -8,6 +8,8 @@ mod checks;
 pub mod composite;
 pub mod dirichlet;
 pub mod exponential;
+pub mod generalised_pareto;
+pub mod gev;
 pub mod gumbel;
 pub mod gumbel_smallest;
 pub mod half_normal;
@@ -236,6 +238,8 @@ pub const FAMILIES: &[&Family] = &[
     &binomial::BINOMIAL,
     &cauchy::CAUCHY,
     &exponential::EXPONENTIAL,
+    &generalised_pareto::GENERALISED_PARETO,
+    &gev::GEV,
     &gumbel::GUMBEL,
     &gumbel_smallest::GUMBEL_SMALLEST,
     &half_normal::HALF_NORMAL,

@@ -88,12 +88,7 @@ fn intervals_have_the_probability_of_the_density() {
                     let count = (lower as i32 + 1)..=(upper as i32);
                     count.map(|k| at(&log, f64::from(k), &theta)[0].exp()).sum()
                 } else {
-                    // apart at the location, where there may be a kink
-                    let middle = quadrature::middle(f, &theta);
-                    let cut = if lower < middle && middle < upper { middle } else { 0.5 * (lower + upper) };
-                    let mut nodes = quadrature::between(lower, cut);
-                    nodes.extend(quadrature::between(cut, upper));
-                    nodes.iter().map(|&(y, w)| w * at(&log, y, &theta)[0].exp()).filter(|p| p.is_finite()).sum()
+                    quadrature::probability(f, &log, &theta, lower, upper)
                 };
                 let all = b.exp() + want + a.exp();
                 // three parts, each good to some eps

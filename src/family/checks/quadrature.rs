@@ -37,7 +37,7 @@ pub(super) fn support(f: &Family, log: &Scalars, theta: &[f64]) -> Vec<(f64, f64
 }
 
 /// The first row parameter that may be any number: the location.
-pub(super) fn middle(f: &Family, theta: &[f64]) -> f64 {
+fn middle(f: &Family, theta: &[f64]) -> f64 {
     f.parameters.iter().position(|p| p.range.low == f64::NEG_INFINITY).map_or(0.0, |i| theta[i])
 }
 
@@ -62,8 +62,31 @@ fn half_line(low: f64, direction: f64, outer: f64, inside: &dyn Fn(f64) -> bool)
         .collect()
 }
 
+/// P(lower < Y <= upper) by integrating the density, in two pieces that part at the location, where there may be a kink.
+pub(super) fn probability(f: &Family, log: &Scalars, theta: &[f64], lower: f64, upper: f64) -> f64 {
+    let inside = |y: f64| at(log, y, theta)[0].is_finite();
+    // an end is drawn in to where the density begins
+    let drawn = |end: f64, other: f64| {
+        let (mut out, mut into) = (end, other);
+        if inside(end) || !inside(other) {
+            return end;
+        }
+        for _ in 0..100 {
+            let half = 0.5 * (out + into);
+            if inside(half) { into = half } else { out = half }
+        }
+        into
+    };
+    let (low, high) = (drawn(lower, upper), drawn(upper, lower));
+    let middle = middle(f, theta);
+    let cut = if low < middle && middle < high { middle } else { 0.5 * (low + high) };
+    let mut nodes = between(low, cut);
+    nodes.extend(between(cut, high));
+    nodes.iter().map(|&(y, w)| w * at(log, y, theta)[0].exp()).filter(|p| p.is_finite()).sum()
+}
+
 /// Between two ends, near the lower one to the last digit of the distance from it.
-pub(super) fn between(low: f64, high: f64) -> Vec<(f64, f64)> {
+fn between(low: f64, high: f64) -> Vec<(f64, f64)> {
     let count = (5.9 / STEP) as i32;
     (-count..=count)
         .map(|k| {
