@@ -33,17 +33,17 @@ pub const GENERALISED_PARETO: Family = Family {
     amounts: &[],
     log_density: "-log(scale) - (1 + shape) * (y - threshold) / scale * log1p_over(0, shape * (y - threshold) / scale)",
     distribution: Some(Distribution {
-        // beyond the upper end the probability is 0 or 1
-        below: "if(shape * (at - threshold) / scale > -1, \
-                log1mexp((at - threshold) / scale * log1p_over(0, shape * (at - threshold) / scale)), 0)",
-        above: "if(shape * (at - threshold) / scale > -1, \
-                -(at - threshold) / scale * log1p_over(0, shape * (at - threshold) / scale), log(0))",
+        // beyond the upper end the probability is 0 or 1; an end below the threshold is as good as the threshold
+        below: "if(shape * max(at - threshold, 0) / scale > -1, \
+                log1mexp(max(at - threshold, 0) / scale * log1p_over(0, shape * max(at - threshold, 0) / scale)), 0)",
+        above: "if(shape * max(at - threshold, 0) / scale > -1, \
+                -max(at - threshold, 0) / scale * log1p_over(0, shape * max(at - threshold, 0) / scale), log(0))",
         between: Some(
-            "if(shape * (lower - threshold) / scale > -1, \
-             -(lower - threshold) / scale * log1p_over(0, shape * (lower - threshold) / scale) \
+            "if(shape * max(lower - threshold, 0) / scale > -1, \
+             -max(lower - threshold, 0) / scale * log1p_over(0, shape * max(lower - threshold, 0) / scale) \
              + if(shape * (upper - threshold) / scale > -1, \
-             log1mexp((upper - lower) / (scale + shape * (lower - threshold)) \
-             * log1p_over(0, shape * (upper - lower) / (scale + shape * (lower - threshold)))), 0), log(0))",
+             log1mexp((upper - max(lower, threshold)) / (scale + shape * max(lower - threshold, 0)) \
+             * log1p_over(0, shape * (upper - max(lower, threshold)) / (scale + shape * max(lower - threshold, 0)))), 0), log(0))",
         ),
     }),
     information: Information::Closed(&[

@@ -26,9 +26,13 @@ pub const PARETO: Family = Family {
     amounts: &[],
     log_density: "log(shape) - log(y) - shape * log1p((y - minimum) / minimum)",
     distribution: Some(Distribution {
-        below: "log1mexp(shape * log1p((at - minimum) / minimum))",
-        above: "-shape * log1p((at - minimum) / minimum)",
-        between: Some("-shape * log1p((lower - minimum) / minimum) + log1mexp(shape * log1p((upper - lower) / lower))"),
+        // an end below the minimum is as good as the minimum
+        below: "log1mexp(shape * log1p(max(at - minimum, 0) / minimum))",
+        above: "-shape * log1p(max(at - minimum, 0) / minimum)",
+        between: Some(
+            "-shape * log1p(max(lower - minimum, 0) / minimum) \
+             + log1mexp(shape * log1p((upper - max(lower, minimum)) / max(lower, minimum)))",
+        ),
     }),
     information: Information::Closed(&[("shape", "shape", "1 / shape^2")]),
     information_note: "closed form; the minimum is known",

@@ -91,7 +91,8 @@ pub(super) fn ends(
     let mut lower = numbers(table, lower_name, "model.response_lower")?.to_vec();
     let mut upper = numbers(table, upper_name, "model.response_upper")?.to_vec();
     let supports = statement.supports();
-    let bounded = !supports.is_empty() && !supports.iter().any(|s| matches!(s, Support::Real | Support::Angle | Support::From(_)));
+    let bounded = !supports.is_empty()
+        && !supports.iter().any(|s| matches!(s, Support::Real | Support::Angle | Support::From(_)));
     let counts = statement.counts();
     let mut exact = vec![false; rows.count];
     for i in 0..rows.count {

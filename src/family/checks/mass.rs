@@ -1,11 +1,11 @@
 //! Densities against one, information against scores, distribution functions against densities.
 
-use super::{FAMILIES, Family, Support, at, compile, inputs, points, quadrature};
+use super::{Family, Support, at, compile, densities, inputs, points, quadrature};
 use crate::family::{Given, Information};
 
 #[test]
 fn densities_sum_or_integrate_to_one() {
-    for f in FAMILIES {
+    for f in densities() {
         let log = compile(f, f.log_density, true, 0);
         for theta in points(f) {
             let parts = quadrature::support(f, &log, &theta).into_iter().map(|(y, w)| w * at(&log, y, &theta)[0].exp());
@@ -18,7 +18,7 @@ fn densities_sum_or_integrate_to_one() {
 
 #[test]
 fn expected_information_is_the_variance_of_the_scores() {
-    for f in FAMILIES {
+    for f in densities() {
         let Information::Closed(list) = f.information else { continue };
         let log = compile(f, f.log_density, true, 1);
         for theta in points(f) {
@@ -75,7 +75,7 @@ fn intervals(f: &Family, theta: &[f64]) -> Vec<(f64, f64)> {
 
 #[test]
 fn intervals_have_the_probability_of_the_density() {
-    for f in FAMILIES {
+    for f in densities() {
         let Some(d) = f.distribution else { continue };
         let log = compile(f, f.log_density, true, 0);
         let (above, below) = (compile(f, d.above, true, 0), compile(f, d.below, true, 0));
@@ -106,7 +106,7 @@ fn intervals_have_the_probability_of_the_density() {
 
 #[test]
 fn derivatives_of_the_distribution_function_agree_with_differences() {
-    for f in FAMILIES {
+    for f in densities() {
         let Some(d) = f.distribution else { continue };
         for text in [Some(d.below), Some(d.above), d.between].into_iter().flatten() {
             let s = compile(f, text, true, 2);

@@ -5,7 +5,7 @@ mod quadrature;
 mod reference;
 mod samples;
 
-use super::{Amounts, FAMILIES, Family, Support};
+use super::{Amounts, FAMILIES, Family, Given, Support};
 use crate::expr::{Graph, Scalars, Scope, Sign, Variable, build, parse_expression};
 
 /// Amounts at which the families are looked at.
@@ -31,6 +31,11 @@ fn points(f: &Family) -> Vec<Vec<f64>> {
     vec![pick(0), pick(1), pick(2)]
 }
 
+/// The families that have something to estimate: all but a mass at one value, which is no density.
+fn densities() -> impl Iterator<Item = &'static Family> {
+    FAMILIES.iter().copied().filter(|f| f.parameters.iter().any(|p| p.given == Given::Estimated))
+}
+
 /// A text as a function of [`NAMES`] and the row parameters; with `order` 1 or 2 its derivatives by the row parameters follow (the
 /// second ones by rows of the upper triangle). `signs`: whether the graph is told the signs that support and ranges imply,
 /// as it is for plain parameters, or none, as for linear predictors. Both must give the same.
@@ -54,6 +59,10 @@ fn compile(f: &Family, text: &str, signs: bool, order: usize) -> Scalars {
         }
         let id = g.parameter(i as u32);
         s.insert(name, id);
+        if name == "at" && i < NAMES.len() {
+            // the same by the name that a row parameter called `at` leaves it
+            s.insert("q", id);
+        }
     }
     let ast = parse_expression(text).unwrap_or_else(|e| panic!("{}: {e:?} in {text}", f.name));
     let id = build(&mut g, &ast, &s).unwrap_or_else(|e| panic!("{}: {e:?} in {text}", f.name));
