@@ -27,6 +27,12 @@ const TEXTS: &[&str] = &[
     "stirling_inverse(0, a * x) + stirling_inverse(1, b / 30) * stirling_inverse(0, a * b)",
     "log1p_over(0, a * x - b / 3) + log1p_over(1, b * y)",
     "log1p_excess(0, a * x - b / 3) * log1p_excess(1, b * y / 9)",
+    "gamma_log_cdf(0, b, x / a) + gamma_log_survival(0, a * b, x * b)",
+    "gamma_log_cdf(1, x, a * b) + gamma_log_survival(1, x + y, 3 * a) * gamma_log_cdf(2, x, b)",
+    "beta_log_cdf(0, 0, a, b, x / 3, 1 - x / 3) + beta_log_cdf(0, 0, a * x, b / a, logistic(b - a), logistic(a - b))",
+    "beta_log_cdf(1, 0, x, y + 1, a / 2, 1 - a / 2) + beta_log_cdf(0, 1, x, 2, 1 - a / 2, a / 2)",
+    "beta_log_cdf(1, 1, x, y + 1, a / 2, 1 - a / 2) + beta_log_cdf(2, 0, x, 2, b / 4, 1 - b / 4) * beta_log_cdf(0, 2, x, 2, a / 4, 1 - a / 4)",
+    "log_bessel_i0(a * x) - bessel_ratio(b * y) * bessel_ratio(20 * a * b * x)",
 ];
 
 fn scope(graph: &mut Graph) -> Scope {

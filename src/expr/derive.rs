@@ -181,6 +181,12 @@ impl Graph {
             Function::Polygamma | Function::StirlingInverse | Function::Log1pOver | Function::Log1pExcess => {
                 self.next_order(function, arguments, 0, at)
             }
+            Function::GammaLogCdf | Function::GammaLogSurvival if at < 2 => self.next_order(function, arguments, 0, at),
+            Function::GammaLogCdf | Function::GammaLogSurvival => self.gamma_tail_by_x(id, function, arguments),
+            Function::BetaLogCdf => self.beta_tail_by(id, arguments, at),
+            Function::LogBesselI0 => self.call(Function::BesselRatio, &[x]),
+            Function::BesselRatio => self.call(Function::BesselRatioSlope, &[x]),
+            Function::BesselRatioSlope => self.bessel_ratio_curvature(id, x),
             Function::Deviance if at == 0 => {
                 let (above, below) = (self.call(Function::Log, &[x]), self.call(Function::Log, &[arguments[1]]));
                 self.subtract(above, below)

@@ -56,6 +56,18 @@ pub enum Function {
     Log1pOver,
     /// `log1p_excess(order, w)`, derivatives of (w - log1p(w))/w^2
     Log1pExcess,
+    /// `gamma_log_cdf(order, a, x)`, derivatives in a of the log of the regularised incomplete gamma function P(a, x)
+    GammaLogCdf,
+    /// `gamma_log_survival(order, a, x)`, likewise of Q = 1 - P
+    GammaLogSurvival,
+    /// `beta_log_cdf(i, j, a, b, x, y)`, derivatives in a and b of the log of I_x(a, b), y = 1 - x
+    BetaLogCdf,
+    /// `log_bessel_i0(x)` = log I_0(x)
+    LogBesselI0,
+    /// `bessel_ratio(x)` = I_1(x) / I_0(x), its derivative
+    BesselRatio,
+    /// `bessel_ratio_slope(x)`, the derivative of that
+    BesselRatioSlope,
 }
 
 /// One row of the table: the function, its written name, how many arguments (fewest, most), and what it is in words.
@@ -132,6 +144,37 @@ pub const TABLE: &[Entry] = &[
         2,
         "derivative of the given order of (w - log1p(w))/w^2, (order, w)",
     ),
+    Entry(
+        Function::GammaLogCdf,
+        "gamma_log_cdf",
+        3,
+        3,
+        "derivative in a of the given order of log P(a, x), the incomplete gamma function, (order, a, x)",
+    ),
+    Entry(
+        Function::GammaLogSurvival,
+        "gamma_log_survival",
+        3,
+        3,
+        "derivative in a of the given order of log(1 - P(a, x)), (order, a, x)",
+    ),
+    Entry(
+        Function::BetaLogCdf,
+        "beta_log_cdf",
+        6,
+        6,
+        "derivative in a and b of the given orders of log I_x(a, b), the incomplete beta function, (order in a, order in b, a, b, \
+         x, 1 - x)",
+    ),
+    Entry(Function::LogBesselI0, "log_bessel_i0", 1, 1, "log of the modified Bessel function of order 0"),
+    Entry(
+        Function::BesselRatio,
+        "bessel_ratio",
+        1,
+        1,
+        "derivative of log_bessel_i0: ratio of Bessel functions 1 and 0",
+    ),
+    Entry(Function::BesselRatioSlope, "bessel_ratio_slope", 1, 1, "derivative of bessel_ratio"),
 ];
 
 impl Function {

@@ -244,8 +244,11 @@ impl Graph {
                 | Function::Logistic
                 | Function::NormalCdf
                 | Function::Erfc
-                | Function::InverseMills => Positive,
-                Function::Abs | Function::Deviance | Function::FactorialRemainder => Nonnegative,
+                | Function::InverseMills
+                | Function::BesselRatioSlope => Positive,
+                Function::Abs | Function::Deviance | Function::FactorialRemainder | Function::LogBesselI0 => {
+                    Nonnegative
+                }
                 // completely monotone: signs of the derivatives alternate
                 Function::Log1pOver | Function::Log1pExcess => match self.as_constant(a[0]) {
                     Some(order) if is_whole(order / 2.0) => Positive,
@@ -261,6 +264,7 @@ impl Graph {
                 | Function::Sinh
                 | Function::Tanh
                 | Function::Erf
+                | Function::BesselRatio
                 | Function::Atan => self.sign(a[0]),
                 _ => Unknown,
             },

@@ -9,6 +9,7 @@ pub mod build;
 pub mod caret;
 mod climb;
 mod derive;
+mod derive_tail;
 mod emit;
 pub mod error;
 pub mod function;

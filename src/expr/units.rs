@@ -179,7 +179,14 @@ impl Lower<'_> {
             }
             Unit::Node(id) => match self.graph.node(id) {
                 Node::Call(Function::Log, a) => self.graph.sign(a[0]) != Sign::Positive,
-                Node::Call(Function::Log1p | Function::Logit, _) => true,
+                Node::Call(
+                    Function::Log1p
+                    | Function::Logit
+                    | Function::GammaLogCdf
+                    | Function::GammaLogSurvival
+                    | Function::BetaLogCdf,
+                    _,
+                ) => true,
                 Node::Call(Function::Deviance, a) => self.graph.sign(a[1]) != Sign::Positive,
                 Node::Product(f) => f.iter().any(|&(i, e)| {
                     (e.get() < 0.0 && self.graph.sign(i) != Sign::Positive) || self.may_be_infinite(Unit::Node(i))

@@ -47,6 +47,12 @@ impl Function {
             Function::StirlingInverse => special::stirling_inverse(a, x[1]),
             Function::Log1pOver => special::log1p_over(a, x[1]),
             Function::Log1pExcess => special::log1p_excess(a, x[1]),
+            Function::GammaLogCdf => special::gamma_log_cdf(a, x[1], x[2]),
+            Function::GammaLogSurvival => special::gamma_log_survival(a, x[1], x[2]),
+            Function::BetaLogCdf => special::beta_log_cdf(a, x[1], x[2], x[3], x[4], x[5]),
+            Function::LogBesselI0 => special::log_bessel_i0(a),
+            Function::BesselRatio => special::bessel_ratio(a),
+            Function::BesselRatioSlope => special::bessel_ratio_slope(a),
         }
     }
 }

@@ -35,23 +35,78 @@ pub fn bessel_i(order: f64, x: f64) -> f64 {
     }
 }
 
-/// exp(-|x|) I_order(x), for large x where I itself overflows. Domain and error as [`bessel_i`].
-pub fn bessel_i_scaled(order: f64, x: f64) -> f64 {
-    let Some((order, x, sign)) = reflected(order, x) else {
-        return f64::NAN;
-    };
-    if x == f64::INFINITY {
-        return 0.0;
+/// log I_0(x), even in x: relative error 1e-15 or so, from 0 on to where I_0 overflows and beyond.
+pub fn log_bessel_i0(x: f64) -> f64 {
+    let x = x.abs();
+    if x < FAR {
+        return libm::log1p(series_rest(0.0, x));
     }
-    if order == 0.0 && x == 0.0 {
-        return 1.0;
-    }
-    if sqrt(order * order + x * x) < FAR {
-        return sign * series(order, x) * exp(-x);
-    }
-    let (exponent, factor) = uniform(order, x);
-    sign * factor * exp(exponent)
+    if x == f64::INFINITY { x } else { x + libm::log(uniform(0.0, x).1) }
 }
+
+/// I_1(x) / I_0(x), odd in x, the derivative of [`log_bessel_i0`]: relative error 1e-15 or so.
+///
+/// By the continued fraction x/(2 + x^2/(4 + x^2/(6 + ...))), far out by its asymptotic series.
+pub fn bessel_ratio(x: f64) -> f64 {
+    let size = x.abs();
+    let ratio = if size < RATIO_FAR { fraction(size).0 } else { 1.0 + far_ratio(size, false) };
+    libm::copysign(ratio, x)
+}
+
+/// The derivative of [`bessel_ratio`], 1 - A/x - A^2 with A the ratio: 1/2 at 0, about 1/(2 x^2) far out. Relative error 1e-14
+/// or so, as neither the differentiated continued fraction nor the differentiated series has the cancellation of that form.
+pub fn bessel_ratio_slope(x: f64) -> f64 {
+    let x = x.abs();
+    if x < RATIO_FAR { fraction(x).1 } else { far_ratio(x, true) / x }
+}
+
+/// From here on the series of the ratio serves: its smallest term is about exp(-2 x).
+const RATIO_FAR: f64 = 20.0;
+
+/// The ratio and its slope for 0 <= x < 20: r_k = I_k / I_(k-1) is 1/(2 k/x + r_(k+1)), evaluated from a k so large that r_k is
+/// x/(2 k) to rounding once it has passed through the others.
+fn fraction(x: f64) -> (f64, f64) {
+    if x.is_nan() {
+        return (x, x);
+    }
+    // in units of x: r_k = x s_k, s_k = 1/(2 k + x^2 s_(k+1)), so that x = 0 is like any other
+    let square = x * x;
+    let (mut s, mut slope) = (0.0, 0.0);
+    for k in (1..=60).rev() {
+        // the slope of s by x is x times `slope`
+        let next = 1.0 / (2.0 * f64::from(k) + square * s);
+        slope = -next * next * (2.0 * s + square * slope);
+        s = next;
+    }
+    (x * s, s + square * slope)
+}
+
+/// The ratio less one, or x times its slope, from A = 1 + sum over k of a_k x^-k; A' = 1 - A/x - A^2 gives the a_k.
+fn far_ratio(x: f64, slope: bool) -> f64 {
+    let inverse = 1.0 / x;
+    let mut sum = 0.0;
+    for (k, a) in RATIO.iter().enumerate().skip(1).rev() {
+        sum = (sum + if slope { -(k as f64) * a } else { *a }) * inverse;
+    }
+    sum
+}
+
+const RATIO: [f64; 41] = {
+    let mut a = [0.0; 41];
+    a[0] = 1.0;
+    let mut n = 1;
+    while n < a.len() {
+        let mut twice = (n as f64 - 2.0) * a[n - 1];
+        let mut i = 1;
+        while i < n {
+            twice -= a[i] * a[n - i];
+            i += 1;
+        }
+        a[n] = 0.5 * twice;
+        n += 1;
+    }
+    a
+};
 
 /// The same value at a non-negative order and argument: I_-n = I_n and I_n(-x) = (-1)^n I_n(x) for whole n.
 fn reflected(order: f64, x: f64) -> Option<(f64, f64, f64)> {
@@ -68,16 +123,19 @@ fn reflected(order: f64, x: f64) -> Option<(f64, f64, f64)> {
 
 /// The ascending series (Abramowitz and Stegun 9.6.10): all terms positive, so it is stable at any argument.
 fn series(order: f64, x: f64) -> f64 {
+    pow(0.5 * x, order) / tgamma(order + 1.0) * (1.0 + series_rest(order, x))
+}
+
+/// Its terms after the first, over the first.
+fn series_rest(order: f64, x: f64) -> f64 {
     let quarter = 0.25 * x * x;
-    let mut term = 1.0;
-    let mut sum = 1.0;
-    let mut k = 1.0;
+    let (mut term, mut sum, mut k) = (1.0, 0.0, 1.0);
     while term > 1e-17 * sum {
         term *= quarter / (k * (order + k));
         sum += term;
         k += 1.0;
     }
-    pow(0.5 * x, order) / tgamma(order + 1.0) * sum
+    sum
 }
 
 /// Logarithm of the leading exponential of exp(-x) I, and its factor, from the uniform expansion for large orders (Abramowitz

@@ -6,7 +6,7 @@ use std::f64::consts::FRAC_1_SQRT_2;
 
 /// Nodes and weights of Gauss-Legendre quadrature with 12 points on [-1, 1], positive half (Abramowitz and Stegun 25.4.29
 /// to more digits).
-const LEGENDRE: [(f64, f64); 6] = [
+pub(super) const LEGENDRE: [(f64, f64); 6] = [
     (0.981_560_634_246_719_2, 0.047_175_336_386_511_83),
     (0.904_117_256_370_474_9, 0.106_939_325_995_318_43),
     (0.769_902_674_194_304_7, 0.160_078_328_543_346_22),
@@ -39,26 +39,6 @@ pub fn normal_log_interval(a: f64, b: f64) -> f64 {
         return normal_log_cdf(-near);
     }
     normal_log_density(near) + log(share(near, far))
-}
-
-/// The slopes (d/da, d/db) of [`normal_log_interval`]: -phi(a) and phi(b) over the probability between, without the loss
-/// that a difference of logarithms has far in the tails.
-pub fn normal_interval_slopes(a: f64, b: f64) -> (f64, f64) {
-    if a >= b || a.is_nan() || b.is_nan() {
-        return (f64::NAN, f64::NAN);
-    }
-    if a < 0.0 && b > 0.0 {
-        let log_p = normal_log_interval(a, b);
-        return (-exp(normal_log_density(a) - log_p), exp(normal_log_density(b) - log_p));
-    }
-    let (near, far) = if a >= 0.0 { (a, b) } else { (-b, -a) };
-    let (at_near, at_far) = if far == f64::INFINITY {
-        (inverse_mills(-near), 0.0)
-    } else {
-        let share = share(near, far);
-        (1.0 / share, exp(-(far - near) * (0.5 * (near + far))) / share)
-    };
-    if a >= 0.0 { (-at_near, at_far) } else { (-at_far, at_near) }
 }
 
 /// (Phi(far) - Phi(near)) / phi(near) = integral of exp(-near t - t^2/2) over t in [0, far - near], for 0 <= near < far.

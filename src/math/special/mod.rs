@@ -4,18 +4,24 @@
 mod bessel;
 mod counts;
 mod gamma;
+mod incomplete_beta;
+mod incomplete_gamma;
 mod interval;
+mod jet;
 mod logistic;
+mod moments;
 mod normal;
 #[cfg(test)]
 mod reference;
 mod smooth;
 mod stirling;
 
-pub use bessel::{bessel_i, bessel_i_scaled};
+pub use bessel::{bessel_i, bessel_ratio, bessel_ratio_slope, log_bessel_i0};
 pub use counts::{deviance, factorial_remainder};
 pub use gamma::{digamma, lgamma, polygamma};
-pub use interval::{normal_interval_slopes, normal_log_interval};
+pub use incomplete_beta::beta_log_cdf;
+pub use incomplete_gamma::{gamma_log_cdf, gamma_log_survival};
+pub use interval::normal_log_interval;
 pub use logistic::{log_logistic, log_mix, log_sum_exp, log1mexp, logistic, logit};
 pub(super) use normal::erfc_scaled_argument;
 pub use normal::{
