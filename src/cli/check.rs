@@ -146,7 +146,7 @@ fn restrictions(job: &Job) -> String {
 fn inference(job: &Job, start: &Vector) -> String {
     let phi = job.sample.coordinates().phi(start);
     let l = job.sample.evaluate(&phi, Order::Value).value;
-    let expected = job.sample.information(Information::Expected, &phi).is_some();
+    let expected = !job.sample.observed_by_default() && job.sample.information(Information::Expected, &phi).is_some();
     let default = if expected { Information::Expected } else { Information::Observed };
     let mut out = String::from("How would it be judged?\n");
     let information = match job.study.settings.information {

@@ -228,6 +228,11 @@ impl Program {
         self.gathered
     }
 
+    /// How many row outputs there are.
+    pub fn row_outputs(&self) -> usize {
+        self.rows.len()
+    }
+
     /// Operations on blocks, for the curious and the benchmark.
     pub fn operations(&self) -> usize {
         self.steps.len()

@@ -162,7 +162,7 @@ pub(super) fn plus(terms: impl IntoIterator<Item = String>) -> String {
 }
 
 /// The index at which the running sum of chances passes a uniform number.
-pub(super) fn pick(chances: &[f64], random: &mut Random) -> usize {
+pub fn pick(chances: &[f64], random: &mut Random) -> usize {
     let mut u = random.uniform() * chances.iter().sum::<f64>();
     for (i, &p) in chances.iter().enumerate() {
         u -= p;

@@ -28,10 +28,8 @@ impl Tests {
 /// What is to be inferred, and how.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Options {
-    /// Which information; `None` takes expected where the likelihood has it (unless `default_observed`), else observed.
+    /// Which information; `None` takes expected where the likelihood has it and prefers it, else observed.
     pub information: Option<Information>,
-    /// With `information: None`: observed even where expected information exists (mixtures, custom densities).
-    pub default_observed: bool,
     /// Which tests are wanted.
     pub tests: Tests,
     /// Confidence of the intervals, between 0 and 1.
@@ -46,7 +44,6 @@ impl Default for Options {
     fn default() -> Self {
         Options {
             information: None,
-            default_observed: false,
             tests: Tests::ALL,
             confidence: 0.95,
             search: Search::default(),

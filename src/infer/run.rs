@@ -67,7 +67,7 @@ fn choose(likelihood: &dyn LogLikelihood, phi: &Vector, options: &Options) -> Re
             Err(InferError::NoInformation(kind.text(), "observed"))
         }
         Some(kind) => Ok(kind),
-        None if !options.default_observed && has(Information::Expected) => Ok(Information::Expected),
+        None if !likelihood.observed_by_default() && has(Information::Expected) => Ok(Information::Expected),
         None => Ok(Information::Observed),
     }
 }
@@ -228,6 +228,7 @@ impl Job<'_> {
         let mut out = Vec::new();
         let free = super::point::free(&point.held, scale).ncols();
         out.extend(warning::few_rows(self.likelihood.weight_total(), free));
+        out.extend(warning::mass(self.likelihood.mass_error(&point.fit.phi)));
         out.extend(warning::small_counts(self.likelihood.small_counts(&point.fit.phi)));
         let mut redundant = point.fit.redundant.clone();
         let dropped = point.tested_at.iter().enumerate().filter(|(position, _)| !kept.contains(position));

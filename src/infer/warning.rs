@@ -64,6 +64,24 @@ pub(super) fn small_counts(counts: Option<(usize, usize)>) -> Option<Warning> {
     ))
 }
 
+/// Distance from one of a density's mass above which it is said: well above the error of the integrals.
+const MASS: f64 = 1e-6;
+
+/// A custom density that does not sum or integrate to one over its support.
+pub(super) fn mass(error: Option<f64>) -> Option<Warning> {
+    let error = error.filter(|e| e.is_nan() || *e > MASS)?;
+    let found = match error.is_nan() {
+        true => "the total mass of log_density over its support could not be computed".to_string(),
+        false => format!("the total mass of log_density over its support misses 1 by {error:.2e}"),
+    };
+    Some(Warning::new(
+        "mass-not-one",
+        format!(
+            "{found}: estimates and tests hold for a density only; add the term that makes it one, or correct [model.support]"
+        ),
+    ))
+}
+
 /// Restrictions that follow from the others.
 pub(super) fn redundant(names: &[&str]) -> Option<Warning> {
     (!names.is_empty()).then(|| {

@@ -74,17 +74,27 @@ impl Template<'_> {
         variables.extend((0..self.predictors.len()).map(|k| Variable::Predictor(k as u32)));
         let log_density = self.density(&mut graph, kind, &scope, &local_nodes, &row_nodes)?;
         let expected = self.expected(&mut graph, kind, &row_nodes, &variables)?;
+        let expectation = match kind == RowKind::Exact && (expected.is_none() || self.checked()) {
+            true => self.expectation(&graph, known, &local_nodes, &row_nodes)?,
+            false => None,
+        };
         Ok(Formula::compile(Ingredients {
             graph,
             log_density,
             variables,
             expected,
+            expectation,
             weighted: self.rows.weights.is_some(),
         }))
     }
 
+    /// Whether the density is the user's, so that its mass has to be looked at.
+    fn checked(&self) -> bool {
+        matches!(self.statement.body, Body::Custom(_))
+    }
+
     /// Columns, parameters and lets as the user's texts see them.
-    fn names(&self, graph: &mut Graph, locals: &[Id]) -> Result<Scope, LikelihoodError> {
+    pub(super) fn names(&self, graph: &mut Graph, locals: &[Id]) -> Result<Scope, LikelihoodError> {
         let mut scope = Scope::new("parameter or column");
         for (i, (key, _)) in self.rows.columns.iter().enumerate() {
             let Some(name) = key.strip_prefix(' ') else { continue };
@@ -105,7 +115,12 @@ impl Template<'_> {
         Ok(scope)
     }
 
-    fn row_parameters(&self, graph: &mut Graph, scope: &Scope, locals: &[Id]) -> Result<Vec<Id>, LikelihoodError> {
+    pub(super) fn row_parameters(
+        &self,
+        graph: &mut Graph,
+        scope: &Scope,
+        locals: &[Id],
+    ) -> Result<Vec<Id>, LikelihoodError> {
         let mut out = Vec::new();
         for (at, row) in self.statement.rows.iter().enumerate() {
             let id = if let Some(ast) = &row.curve {
@@ -163,7 +178,7 @@ impl Template<'_> {
         scope
     }
 
-    fn density(
+    pub(super) fn density(
         &self,
         graph: &mut Graph,
         kind: RowKind,

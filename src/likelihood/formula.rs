@@ -1,5 +1,6 @@
 //! The programs of one kind of row: value, gradient, Hessian and the two sums of information, compiled from one graph.
 
+use super::expectation::Expectation;
 use crate::expr::{Graph, Id, Layout, Output, Program, Variable, compile, preparation};
 
 /// Where an entry of a gradient or a symmetric matrix comes from.
@@ -32,6 +33,8 @@ pub(super) struct Formula {
     pub(super) gradient: Pass,
     pub(super) hessian: Pass,
     pub(super) expected: Option<Pass>,
+    /// What expected information is computed from where no formula gives it.
+    pub(super) expectation: Option<Expectation>,
     pub(super) outer: Pass,
     /// Counts the rows in which something ties; `None` where nothing can.
     pub(super) ties: Option<Pass>,
@@ -53,6 +56,8 @@ pub(super) struct Ingredients {
     pub(super) variables: Vec<Variable>,
     /// Expected information of a row between variables, where the family has it: (variable, variable, node).
     pub(super) expected: Option<Vec<(usize, usize, Id)>>,
+    /// What expected information is computed from otherwise.
+    pub(super) expectation: Option<Expectation>,
     pub(super) weighted: bool,
 }
 
@@ -98,7 +103,7 @@ impl Compiler<'_> {
 impl Formula {
     /// Differentiates and compiles.
     pub(super) fn compile(ingredients: Ingredients) -> Formula {
-        let Ingredients { mut graph, log_density, variables, expected, weighted } = ingredients;
+        let Ingredients { mut graph, log_density, variables, expected, mut expectation, weighted } = ingredients;
         let n = variables.len();
         let first: Vec<Id> = variables.iter().map(|&v| graph.derivative(log_density, v)).collect();
         let mut second = Vec::with_capacity(n * (n + 1) / 2);
@@ -123,9 +128,12 @@ impl Formula {
             program: compile(c.graph, &mut c.layout, &[Output::Row(log_density)], predictors, weighted),
             ..Pass::default()
         };
-        let layout = c.layout;
+        let mut layout = c.layout;
+        if let Some(e) = &mut expectation {
+            e.compile(&mut graph, &mut layout, &variables, weighted);
+        }
         let (preparation, raw) = preparation(&mut graph, &layout, weighted);
         let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&graph, slot)).collect();
-        Formula { value, gradient, hessian, expected, outer, ties, rows, layout, preparation, raw }
+        Formula { value, gradient, hessian, expected, expectation, outer, ties, rows, layout, preparation, raw }
     }
 }

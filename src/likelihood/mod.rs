@@ -4,10 +4,13 @@
 mod checks;
 pub mod closure;
 mod compose;
+#[cfg(test)]
+mod computed_checks;
 pub mod coordinates;
 mod design;
 mod designs;
 pub mod error;
+mod expectation;
 mod formula;
 mod gram;
 mod labels;
@@ -19,6 +22,7 @@ pub mod prepare;
 mod response;
 mod rows;
 pub mod sample;
+pub mod simulate;
 mod start;
 mod statement;
 pub mod wanted;
@@ -29,6 +33,7 @@ pub use error::LikelihoodError;
 pub use model::Model;
 pub use prepare::prepare;
 pub use sample::Sample;
+pub use simulate::simulate;
 pub use wanted::wanted;
 
 use crate::math::{Matrix, Range, Vector};
@@ -114,6 +119,15 @@ pub trait LogLikelihood: Sync {
     }
     /// The same likelihood over a part of its rows, on which starts can be tried cheaply; `None` where the rows are few.
     fn thinned(&self) -> Option<Box<dyn LogLikelihood>> {
+        None
+    }
+    /// Whether observed information is what is used unless another is asked for.
+    fn observed_by_default(&self) -> bool {
+        false
+    }
+    /// How far the total mass of the density is from one at most, over some of the rows; `None` where that is not in
+    /// question, or nothing says which values the response takes.
+    fn mass_error(&self, _phi: &Vector) -> Option<f64> {
         None
     }
     /// Whether a kink (a tie of abs, min, max) lies at this point.

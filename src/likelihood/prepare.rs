@@ -3,12 +3,12 @@
 use std::collections::HashMap;
 
 use super::compose::{Local, LocalPredictor, Template};
-use super::designs::designs;
+use super::designs::{Designs, designs};
 use super::formula::Formula;
-use super::model::Model;
+use super::model::{Model, Response};
 use super::numbering::{Numbering, number_coefficients, number_locals};
 use super::part::{Part, Predictor};
-use super::plan::{Bound, check_levels, locals, predictors};
+use super::plan::{Bound, LocalPlan, PredictorPlan, check_levels, locals, predictors};
 use super::rows::{self, RowKind, Rows};
 use super::sample::{Mixture, Sample};
 use super::start::{self, Shape};
@@ -16,54 +16,162 @@ use super::statement::{Body, Statement};
 use super::{Coordinates, LikelihoodError, labels};
 use crate::data::Table;
 use crate::expr::{Name, blocks};
+use crate::family::Support;
 use crate::family::composite::{Composite, Layout, Reads};
+
+/// A statement joined to a table: parameters numbered, designs made, nothing compiled yet.
+pub(super) struct Plan<'m> {
+    pub(super) model: &'m Model,
+    pub(super) table: &'m Table,
+    pub(super) statement: Statement<'m>,
+    pub(super) rows: Rows,
+    pub(super) locals: Vec<LocalPlan<'m>>,
+    pub(super) predictors: Vec<PredictorPlan<'m>>,
+    template_locals: Vec<Local>,
+    template_predictors: Vec<LocalPredictor>,
+    pub(super) numbering: Numbering,
+    /// By level of `per`.
+    pub(super) bound_locals: Vec<Vec<Bound>>,
+    /// By level of `per` and predictor.
+    pub(super) bound_coefficients: Vec<Vec<Vec<Bound>>>,
+    pub(super) designs: Designs,
+    pub(super) coordinates: Coordinates,
+}
+
+impl<'m> Plan<'m> {
+    /// # Errors
+    /// A statement that does not fit its family or the table; values that the response cannot take.
+    pub(super) fn new(model: &'m Model, table: &'m Table) -> Result<Plan<'m>, LikelihoodError> {
+        let layout = match Composite::named(&model.family) {
+            Some(family) => Some(labels::layout(model, family, table)?),
+            None => None,
+        };
+        let statement = Statement::resolve(model, layout)?;
+        let mut rows = rows::read(model, &statement, table)?;
+        let locals = locals(model, &statement, &rows, table)?;
+        let predictors = predictors(&statement, table)?;
+        let levels = rows.levels.len().max(1);
+        check_levels(model, &rows)?;
+        let mut numbering = Numbering::default();
+        let mut bound_locals: Vec<Vec<Bound>> = Vec::new();
+        let mut bound_coefficients: Vec<Vec<Vec<Bound>>> = Vec::new();
+        for level in 0..levels {
+            let prefix = rows.levels.get(level).map(|l| Name::single(l.as_str()));
+            bound_locals.push(number_locals(model, &locals, prefix.as_ref(), level, &bound_locals, &mut numbering)?);
+            bound_coefficients.push(number_coefficients(
+                &statement,
+                table,
+                &predictors,
+                prefix.as_ref(),
+                level,
+                &bound_coefficients,
+                &mut numbering,
+            )?);
+        }
+        threshold(model, &statement, table, &mut rows, &locals, &bound_locals)?;
+        let designs = designs(&rows, table, &statement, &predictors, &bound_coefficients)?;
+        let mut coordinates = Coordinates::identity();
+        for (at, r) in &designs.blocks {
+            coordinates.push(*at, r.clone());
+        }
+        Ok(Plan {
+            model,
+            table,
+            template_locals: locals.iter().map(|l| l.local.clone()).collect(),
+            template_predictors: predictors.iter().map(|p| p.local.clone()).collect(),
+            statement,
+            rows,
+            locals,
+            predictors,
+            numbering,
+            bound_locals,
+            bound_coefficients,
+            designs,
+            coordinates,
+        })
+    }
+
+    /// What formulas are made from.
+    pub(super) fn template(&self) -> Template<'_> {
+        Template {
+            model: self.model,
+            statement: &self.statement,
+            rows: &self.rows,
+            table: self.table,
+            locals: &self.template_locals,
+            predictors: &self.template_predictors,
+        }
+    }
+
+    /// The known values of the parameters of a level.
+    pub(super) fn known(&self, level: usize) -> Vec<Option<f64>> {
+        let value = |b: &Bound| if let Bound::Known(x) = b { Some(*x) } else { None };
+        self.bound_locals[level].iter().map(value).collect()
+    }
+
+    /// Index among the free parameters of each that a formula of this level has.
+    pub(super) fn map(&self, level: usize) -> Vec<usize> {
+        self.bound_locals[level].iter().filter_map(|b| if let Bound::Free(i) = b { Some(*i) } else { None }).collect()
+    }
+
+    /// The predictors of some rows of a level.
+    pub(super) fn predictors_of(&self, level: usize, members: &[usize]) -> Vec<Predictor> {
+        let bound = &self.bound_coefficients[level];
+        (0..self.predictors.len())
+            .map(|k| Predictor {
+                columns: bound[k]
+                    .iter()
+                    .enumerate()
+                    .filter(|(_, b)| matches!(b, Bound::Free(_)))
+                    .map(|(j, _)| blocks(members.iter().map(|&i| self.designs.columns[k][j][i])))
+                    .collect(),
+                offset: self.designs.offsets[k].as_ref().map(|o| blocks(members.iter().map(|&i| o[i]))),
+                at: bound[k].iter().filter_map(|b| if let Bound::Free(i) = b { Some(*i) } else { None }).collect(),
+            })
+            .collect()
+    }
+}
+
+/// A response bounded below by a known parameter: values under it are faults, ends of intervals at or under it say nothing.
+fn threshold(
+    model: &Model,
+    statement: &Statement,
+    table: &Table,
+    rows: &mut Rows,
+    locals: &[LocalPlan],
+    bound: &[Vec<Bound>],
+) -> Result<(), LikelihoodError> {
+    let Body::Density(f) = &statement.body else { return Ok(()) };
+    let Support::From(name) = f.support else { return Ok(()) };
+    let Some(at) = locals.iter().position(|l| l.local.name.as_single() == Some(name)) else { return Ok(()) };
+    for i in 0..rows.count {
+        let Bound::Known(low) = bound[rows.level[i] as usize][at] else { continue };
+        let column = match &model.response {
+            Response::Column(c) => c.as_str(),
+            _ => "of the response",
+        };
+        let words = format!("a number of at least {name}, which is {low}");
+        if rows.kinds[i] == RowKind::Exact {
+            let y = rows.values[i];
+            if y < low {
+                return Err(rows::fault(table, i, column, y, &words));
+            }
+            continue;
+        }
+        rows.bound_below(i, low).map_err(|y| rows::fault(table, i, column, y, &words))?;
+    }
+    Ok(())
+}
 
 /// Prepares a likelihood.
 ///
 /// # Errors
 /// A statement that does not fit its family or the table; values that the response cannot take.
 pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> {
-    let layout = match Composite::named(&model.family) {
-        Some(family) => Some(labels::layout(model, family, table)?),
-        None => None,
-    };
-    let statement = Statement::resolve(model, layout)?;
-    let rows = rows::read(model, &statement, table)?;
-    let locals = locals(model, &statement, &rows, table)?;
-    let predictors = predictors(&statement, table)?;
-    let template_locals: Vec<Local> = locals.iter().map(|l| l.local.clone()).collect();
-    let template_predictors: Vec<LocalPredictor> = predictors.iter().map(|p| p.local.clone()).collect();
-    let template = Template {
-        model,
-        statement: &statement,
-        rows: &rows,
-        table,
-        locals: &template_locals,
-        predictors: &template_predictors,
-    };
+    let plan = Plan::new(model, table)?;
+    let template = plan.template();
+    let Plan { statement, rows, locals, predictors, bound_locals, bound_coefficients, designs, .. } = &plan;
     let levels = rows.levels.len().max(1);
-    check_levels(model, &rows)?;
-    let mut numbering = Numbering::default();
-    let mut bound_locals: Vec<Vec<Bound>> = Vec::new();
-    let mut bound_coefficients: Vec<Vec<Vec<Bound>>> = Vec::new();
-    for level in 0..levels {
-        let prefix = rows.levels.get(level).map(|l| Name::single(l.as_str()));
-        bound_locals.push(number_locals(model, &locals, prefix.as_ref(), level, &bound_locals, &mut numbering)?);
-        bound_coefficients.push(number_coefficients(
-            &statement,
-            table,
-            &predictors,
-            prefix.as_ref(),
-            level,
-            &bound_coefficients,
-            &mut numbering,
-        )?);
-    }
-    let designs = designs(&rows, table, &statement, &predictors, &bound_coefficients)?;
-    let mut coordinates = Coordinates::identity();
-    for (at, r) in designs.blocks {
-        coordinates.push(at, r);
-    }
     // rows by level and kind
     let mut groups: Vec<((u32, RowKind), Vec<usize>)> = Vec::new();
     {
@@ -89,14 +197,7 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         .map(|((level, kind), _)| (binned && *kind != RowKind::Exact).then(|| level_weight(*level as usize)))
         .collect();
     for ((level, kind), members) in groups {
-        let bound = &bound_locals[level as usize];
-        let known: Vec<Option<f64>> = bound
-            .iter()
-            .map(|b| match b {
-                Bound::Known(x) => Some(*x),
-                Bound::Free(_) => None,
-            })
-            .collect();
+        let known = plan.known(level as usize);
         let key = (kind, known.iter().map(|k| k.map(f64::to_bits)).collect::<Vec<_>>());
         let formula = match compiled.get(&key) {
             Some(&f) => f,
@@ -106,46 +207,33 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
                 formulas.len() - 1
             }
         };
-        let map = bound.iter().filter_map(|b| if let Bound::Free(i) = b { Some(*i) } else { None }).collect();
-        let part_predictors = (0..predictors.len())
-            .map(|k| Predictor {
-                columns: bound_coefficients[level as usize][k]
-                    .iter()
-                    .enumerate()
-                    .filter(|(_, b)| matches!(b, Bound::Free(_)))
-                    .map(|(j, _)| blocks(members.iter().map(|&i| designs.columns[k][j][i])))
-                    .collect(),
-                offset: designs.offsets[k].as_ref().map(|o| blocks(members.iter().map(|&i| o[i]))),
-                at: bound_coefficients[level as usize][k]
-                    .iter()
-                    .filter_map(|b| if let Bound::Free(i) = b { Some(*i) } else { None })
-                    .collect(),
-            })
-            .collect();
         let weights: Option<Vec<f64>> = rows.weights.as_ref().map(|w| members.iter().map(|&i| w[i]).collect());
-        parts.push(Part::bind(
+        let inputs = formulas[formula].expectation.as_ref().map(|e| template.inputs(e, &members));
+        let mut part = Part::bind(
             &formulas[formula],
             formula,
             members.len(),
             &|c| template.raw(c, &members),
             weights.as_deref(),
-            map,
-            part_predictors,
-        ));
+            plan.map(level as usize),
+            plan.predictors_of(level as usize, &members),
+        );
+        part.inputs = inputs;
+        parts.push(part);
     }
     let shape = Shape {
         model,
-        statement: &statement,
-        rows: &rows,
-        locals: &locals,
-        predictors: &predictors,
-        bound_locals: &bound_locals,
-        bound_coefficients: &bound_coefficients,
+        statement,
+        rows,
+        locals,
+        predictors,
+        bound_locals,
+        bound_coefficients,
         design: &designs.columns,
         offsets: &designs.offsets,
-        coordinates: &coordinates,
+        coordinates: &plan.coordinates,
     };
-    let start = start::theta(&shape, &numbering.parameters, &numbering.starts);
+    let start = start::theta(&shape, &plan.numbering.parameters, &plan.numbering.starts);
     let mixture = mixture(&shape, levels);
     let all_kinds_exact = rows.kinds.iter().all(|&k| k == RowKind::Exact);
     let concave = match &statement.body {
@@ -160,7 +248,7 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         }
         Body::Custom(_) => false,
     };
-    let equations = equations(&statement, &rows)?;
+    let equations = equations(statement, rows)?;
     // cells have expected counts where the shares are parameters themselves
     let plain = |layout: &Layout| !layout.terms && !statement.rows.iter().any(|r| r.curve.is_some());
     let cells = match &statement.body {
@@ -170,12 +258,14 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
         _ => Vec::new(),
     };
     Ok(Sample {
-        parameters: numbering.parameters,
-        known: numbering.known,
-        coordinates,
+        weight_total: rows.weight_total(),
+        observed_by_default: matches!(statement.body, Body::Mixture(_) | Body::Custom(_)),
+        custom: matches!(statement.body, Body::Custom(_)),
+        parameters: plan.numbering.parameters,
+        known: plan.numbering.known,
+        coordinates: plan.coordinates,
         formulas,
         parts,
-        weight_total: rows.weight_total(),
         start,
         concave,
         equations,

@@ -74,6 +74,24 @@ impl Rows {
         self.weights.as_ref().map_or(self.count as f64, |w| w.iter().sum())
     }
 
+    /// Takes what lies at or below `low` out of the interval of a row; the upper end if nothing is left.
+    pub(super) fn bound_below(&mut self, row: usize, low: f64) -> Result<(), f64> {
+        let at = |rows: &Rows, key: &str| rows.columns.iter().position(|c| c.0 == key);
+        let (Some(lower), upper) = (at(self, LOWER), at(self, UPPER)) else { return Ok(()) };
+        let high = upper.map_or(f64::INFINITY, |u| self.columns[u].1[row]);
+        if high <= low {
+            return Err(high);
+        }
+        if self.columns[lower].1[row] <= low {
+            // under the end of the support everything is certain
+            self.columns[lower].1[row] = low;
+            if self.kinds[row] == RowKind::Between {
+                self.kinds[row] = RowKind::Below;
+            }
+        }
+        Ok(())
+    }
+
     /// Values that stand for the response: itself, the middle of its interval, or the end that is known.
     fn representatives(&self) -> Vec<f64> {
         let get = |key: &str| self.column(key).map(|c| c.1);

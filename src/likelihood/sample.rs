@@ -24,6 +24,9 @@ pub struct Sample {
     pub(super) equations: Vec<String>,
     pub(super) mixture: Option<Mixture>,
     pub(super) expected: bool,
+    pub(super) observed_by_default: bool,
+    /// Whether the density is the user's own.
+    pub(super) custom: bool,
     /// Cells of labels: for each level of `per` its total weight and what each share is bound to.
     pub(super) cells: Vec<(f64, Vec<Bound>)>,
     /// For each part: the total weight of its level of `per` if its rows are bins.
@@ -47,6 +50,8 @@ struct Component {
 
 /// Rows that starts are tried on; a likelihood is thinned when it has several times as many.
 const THIN_ROWS: usize = 16_384;
+/// Rows whose total mass is looked at.
+const MASS_ROWS: usize = 100;
 /// Fewest rows that a part may keep.
 const THIN_PART: usize = 500;
 
@@ -86,9 +91,17 @@ impl Sample {
         &self.start
     }
 
-    /// Whether the family has expected information for these rows.
-    pub fn has_expected(&self) -> bool {
-        self.expected && self.formulas.iter().all(|f| f.expected.is_some())
+    /// Expected information by sums and integrals over the responses that could have been.
+    fn computed(&self, theta: &[f64]) -> Option<Matrix> {
+        let n = self.parameters.len();
+        let mut matrix = Matrix::zeros(n, n);
+        for part in &self.parts {
+            let (e, inputs) = (self.formulas[part.formula].expectation.as_ref()?, part.inputs.as_ref()?);
+            if !e.add(part, inputs, theta, &mut matrix) {
+                return None;
+            }
+        }
+        Some(matrix)
     }
 
     /// Operations on blocks and sums of one pass with Hessian, by formula.
@@ -157,7 +170,11 @@ impl LogLikelihood for Sample {
 
     fn information(&self, kind: Information, phi: &Vector) -> Option<Matrix> {
         match kind {
-            Information::Expected if self.has_expected() => Some(self.run(Which::Expected, phi.as_slice()).2),
+            Information::Expected if !self.expected => None,
+            Information::Expected if self.formulas.iter().all(|f| f.expected.is_some()) => {
+                Some(self.run(Which::Expected, phi.as_slice()).2)
+            }
+            Information::Expected => self.computed(phi.as_slice()),
             Information::Outer => Some(self.run(Which::Outer, phi.as_slice()).2),
             _ => None,
         }
@@ -193,6 +210,8 @@ impl LogLikelihood for Sample {
             equations: self.equations.clone(),
             mixture: self.mixture.clone(),
             expected: self.expected,
+            observed_by_default: self.observed_by_default,
+            custom: self.custom,
             cells: self.cells.clone(),
             bins: self.bins.clone(),
         }))
@@ -226,6 +245,23 @@ impl LogLikelihood for Sample {
             }
         }
         None
+    }
+
+    fn observed_by_default(&self) -> bool {
+        self.observed_by_default
+    }
+
+    fn mass_error(&self, phi: &Vector) -> Option<f64> {
+        if !self.custom {
+            return None;
+        }
+        let mut worst: Option<f64> = None;
+        for part in &self.parts {
+            let (e, inputs) = (self.formulas[part.formula].expectation.as_ref()?, part.inputs.as_ref()?);
+            let found = e.mass(part, inputs, phi.as_slice(), MASS_ROWS);
+            worst = Some(worst.map_or(found, |w| if found > w || found.is_nan() { found } else { w }));
+        }
+        worst
     }
 
     fn kink(&self, phi: &Vector) -> bool {

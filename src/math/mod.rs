@@ -3,6 +3,7 @@
 //! - [`special`]: scalar functions of the expression language, plain `fn(f64) -> f64`, NaN outside their domain.
 //! - [`tail`]: upper tail probabilities of test statistics and their logarithms.
 //! - [`linear`]: rank and null space, inertia, definite solves, orthogonalisation of a design.
+//! - [`quadrature`]: integrals of several functions at once.
 //! - [`Random`]: random numbers from a seed.
 //! - [`Range`]: the natural range of a parameter and its written form.
 //!
@@ -17,6 +18,7 @@ pub type Cholesky = nalgebra::Cholesky<f64, nalgebra::Dyn>;
 
 pub mod error;
 pub mod linear;
+pub mod quadrature;
 pub mod random;
 pub mod range;
 pub mod special;
