@@ -329,6 +329,7 @@ impl Expectation {
         let one = |s: &Support| -> (f64, f64) {
             match s {
                 Support::Real => (f64::NEG_INFINITY, f64::INFINITY),
+                Support::Angle => (-std::f64::consts::PI, std::f64::consts::PI),
                 Support::Nonnegative | Support::Positive => (0.0, f64::INFINITY),
                 Support::Unit => (0.0, 1.0),
                 Support::From(_) => (self.threshold.map_or(0.0, |q| row[q]), f64::INFINITY),
