@@ -45,7 +45,7 @@ fn tail(a: f64, b: f64, x: f64, y: f64, complement: bool) -> Jet {
     if a >= LARGE && b >= LARGE {
         let f = Shapes { a, b, ratio: x / y, tilt: ((a - 1.0) * y - (b - 1.0) * x) / y };
         let integral = integral(&f, f.tilt, (a - 1.0) + (b - 1.0) * f.ratio * f.ratio);
-        let log = Jet::log_of_a(a) + log_of_b + prefix(a, b, x, y) + integral;
+        let log = Jet::log_of_a(a) + log_of_b + prefix(a, b, x, y) + integral - Jet::constant(log(y));
         return if complement { log.exp().log_complement() } else { log };
     }
     let over_b = prefix(a, b, x, y) + fraction(a, b, x);
@@ -77,7 +77,7 @@ fn prefix(a: f64, b: f64, x: f64, y: f64) -> Jet {
     }
 }
 
-/// The exponent (a-1) log(1-s) + (b-1) log(1 + s x/y) of I over a b times the prefix, t = x (1-s).
+/// The exponent (a-1) log(1-s) + (b-1) log(1 + s x/y) of I y over a b times the prefix, t = x (1-s).
 struct Shapes {
     a: f64,
     b: f64,
