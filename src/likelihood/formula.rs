@@ -36,6 +36,9 @@ pub(super) struct Formula {
     /// What expected information is computed from where no formula gives it.
     pub(super) expectation: Option<Expectation>,
     pub(super) outer: Pass,
+    /// Second derivatives with what is squared taken at its tangent, and for each variable whether a square contains it;
+    /// `None` where no square bends.
+    pub(super) tangent: Option<(Pass, Vec<bool>)>,
     /// Counts the rows in which something ties; `None` where nothing can.
     pub(super) ties: Option<Pass>,
     /// log f row by row.
@@ -100,6 +103,31 @@ impl Compiler<'_> {
     }
 }
 
+/// Second derivatives by pairs of variables, and which variables a square contains.
+type Tangent = (Vec<(usize, usize, Id)>, Vec<bool>);
+
+/// The second derivatives less what the insides of squares bend, if any of them does.
+fn tangent(
+    graph: &mut Graph,
+    log_density: Id,
+    variables: &[Variable],
+    second: &[(usize, usize, Id)],
+) -> Option<Tangent> {
+    let squares = graph.squares(log_density);
+    let mut bent = false;
+    let straight: Vec<(usize, usize, Id)> = second
+        .iter()
+        .map(|&(u, v, id)| {
+            let bend = graph.bend(&squares, variables[u], variables[v]);
+            bent |= graph.as_constant(bend) != Some(0.0);
+            (u, v, graph.subtract(id, bend))
+        })
+        .collect();
+    let zero = graph.constant(0.0);
+    let inside = variables.iter().map(|&v| squares.iter().any(|s| graph.derivative(s.inside, v) != zero)).collect();
+    bent.then_some((straight, inside))
+}
+
 impl Formula {
     /// Differentiates and compiles.
     pub(super) fn compile(ingredients: Ingredients) -> Formula {
@@ -114,6 +142,7 @@ impl Formula {
                 outer.push((u, v, graph.multiply(first[u], first[v])));
             }
         }
+        let tangent = tangent(&mut graph, log_density, &variables, &second);
         let predictors = variables.iter().filter(|v| matches!(v, Variable::Predictor(_))).count();
         let mut c = Compiler { graph: &mut graph, layout: Layout::default(), variables: &variables, weighted };
         let value = c.pass(Some(log_density), &[], &[]);
@@ -121,6 +150,7 @@ impl Formula {
         let hessian = c.pass(Some(log_density), &first, &second);
         let expected = expected.map(|e| c.pass(None, &[], &e));
         let outer = c.pass(None, &[], &outer);
+        let tangent = tangent.map(|(second, inside)| (c.pass(None, &[], &second), inside));
         let ties = c.graph.ties(log_density);
         let any = c.graph.sum(0.0, &ties.iter().map(|&t| (t, 1.0)).collect::<Vec<_>>());
         let ties = (!ties.is_empty()).then(|| c.pass(Some(any), &[], &[]));
@@ -134,6 +164,19 @@ impl Formula {
         }
         let (preparation, raw) = preparation(&mut graph, &layout, weighted);
         let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&graph, slot)).collect();
-        Formula { value, gradient, hessian, expected, expectation, outer, ties, rows, layout, preparation, raw }
+        Formula {
+            value,
+            gradient,
+            hessian,
+            expected,
+            expectation,
+            outer,
+            tangent,
+            ties,
+            rows,
+            layout,
+            preparation,
+            raw,
+        }
     }
 }

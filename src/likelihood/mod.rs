@@ -84,6 +84,16 @@ pub enum Information {
     Robust,
 }
 
+/// The Hessian of l with everything that is squared in the log density replaced by its tangent: where l is minus a sum
+/// of squares it is never indefinite, and it foretells l further along a curved valley than the Hessian does.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Tangent {
+    /// In working coordinates, n by n.
+    pub hessian: Matrix,
+    /// For each parameter whether a square contains it.
+    pub inside: Vec<bool>,
+}
+
 /// A log-likelihood with its parameters. `phi` are working coordinates, `theta = coordinates().theta(phi)` the
 /// parameters as named; they are the same unless a design was orthogonalised.
 pub trait LogLikelihood: Sync {
@@ -96,6 +106,10 @@ pub trait LogLikelihood: Sync {
     /// `Expected` or `Outer` information in working coordinates; `None` where the family has none.
     /// Entries may be infinite for a parameter on the edge of its range.
     fn information(&self, kind: Information, phi: &Vector) -> Option<Matrix>;
+    /// The model of Gauss and Newton; `None` where no square in the log density bends.
+    fn tangent(&self, _phi: &Vector) -> Option<Tangent> {
+        None
+    }
     /// Sum of the weights of the rows.
     fn weight_total(&self) -> f64;
     /// Starting points (`theta`): the first computed from the data, the rest spread deterministically by `seed`.

@@ -44,6 +44,7 @@ pub(super) enum Which {
     Hessian,
     Expected,
     Outer,
+    Tangent,
     Ties,
 }
 
@@ -55,6 +56,8 @@ impl Formula {
             Which::Hessian => Some(&self.hessian),
             Which::Expected => self.expected.as_ref(),
             Which::Outer => Some(&self.outer),
+            // without a bent square the second derivatives are what they are
+            Which::Tangent => Some(self.tangent.as_ref().map_or(&self.hessian, |t| &t.0)),
             Which::Ties => self.ties.as_ref(),
         }
     }
@@ -166,6 +169,17 @@ impl Part {
             // starts need no expectation
             inputs: None,
             kept: OnceLock::new(),
+        }
+    }
+
+    /// Marks the free parameters that a square of this part contains.
+    pub(super) fn mark(&self, inside: &[bool], marked: &mut [bool]) {
+        let (parameters, predictors) = inside.split_at(self.map.len());
+        for (&i, _) in self.map.iter().zip(parameters).filter(|p| *p.1) {
+            marked[i] = true;
+        }
+        for (p, _) in self.predictors.iter().zip(predictors).filter(|p| *p.1) {
+            p.at.iter().for_each(|&i| marked[i] = true);
         }
     }
 

@@ -7,7 +7,7 @@ use super::formula::Formula;
 use super::part::{Part, Which, pairwise};
 use super::plan::Bound;
 use super::start;
-use super::{Evaluation, Information, LogLikelihood, Order, Parameter};
+use super::{Evaluation, Information, LogLikelihood, Order, Parameter, Tangent};
 use crate::math::{Matrix, Vector};
 
 /// A log-likelihood over the rows of a table.
@@ -178,6 +178,19 @@ impl LogLikelihood for Sample {
             Information::Outer => Some(self.run(Which::Outer, phi.as_slice()).2),
             _ => None,
         }
+    }
+
+    fn tangent(&self, phi: &Vector) -> Option<Tangent> {
+        if self.formulas.iter().all(|f| f.tangent.is_none()) {
+            return None;
+        }
+        let mut inside = vec![false; self.parameters.len()];
+        for part in &self.parts {
+            if let Some((_, variables)) = &self.formulas[part.formula].tangent {
+                part.mark(variables, &mut inside);
+            }
+        }
+        Some(Tangent { hessian: self.run(Which::Tangent, phi.as_slice()).2, inside })
     }
 
     fn weight_total(&self) -> f64 {

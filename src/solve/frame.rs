@@ -4,7 +4,7 @@ use std::cell::Cell;
 
 use super::End;
 use super::equations::Equations;
-use crate::likelihood::{LogLikelihood, Order};
+use crate::likelihood::{LogLikelihood, Order, Tangent};
 use crate::math::{Matrix, Vector};
 use crate::restriction::Sides;
 
@@ -153,6 +153,13 @@ impl<'a> Frame<'a> {
         self.passes.set(self.passes.get() + 1);
         let e = self.likelihood.evaluate(phi, Order::Gradient);
         (e.value.is_finite() && e.gradient.iter().all(|x| x.is_finite())).then_some((e.value, e.gradient))
+    }
+
+    /// The model of Gauss and Newton at phi, where l has one and it is finite.
+    pub fn tangent(&self, phi: &Vector) -> Option<Tangent> {
+        let tangent = self.likelihood.tangent(phi)?;
+        self.passes.set(self.passes.get() + 1);
+        tangent.hessian.iter().all(|x| x.is_finite()).then_some(tangent)
     }
 
     /// Both sides at phi, and the Jacobian by phi; `None` where something is not finite.

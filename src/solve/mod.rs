@@ -3,6 +3,7 @@
 pub mod certificate;
 pub mod error;
 
+mod approach;
 mod confirm;
 mod degenerate;
 mod differences;

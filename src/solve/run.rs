@@ -2,6 +2,7 @@
 
 use argmin::core::Executor;
 
+use super::approach::{Approach, approach};
 use super::error::SolveError;
 use super::frame::{Frame, Point, infeasibility};
 use super::local::scale;
@@ -38,7 +39,26 @@ pub(super) fn run<'a>(
         Ok(point) => point,
         Err(outcome) => return Ok(outcome),
     };
-    let newton = Newton::new(frame, *point, known);
+    drive(Newton::new(frame, *point, known), iterations).map(Outcome::Ran)
+}
+
+/// Runs Newton from where the approach from a start led; `None` where l has no approach or the start is near already.
+pub(super) fn led<'a>(
+    frame: &'a Frame<'a>,
+    start: &Vector,
+    iterations: usize,
+) -> Result<Option<Box<Newton<'a>>>, SolveError> {
+    let Ok(point) = repair(frame, start) else { return Ok(None) };
+    let Some(Approach { point, trace }) = approach(frame, &point).filter(|a| !a.trace.is_empty()) else {
+        return Ok(None);
+    };
+    let mut newton = Newton::new(frame, point, Known::new());
+    newton.trace = trace;
+    drive(newton, iterations).map(Some)
+}
+
+/// Runs Newton to its end.
+fn drive(newton: Newton, iterations: usize) -> Result<Box<Newton>, SolveError> {
     let first = newton.point.phi.as_slice().to_vec();
     let result = Executor::new((), newton)
         .configure(|state: Iterate| state.param(first).max_iters(iterations as u64))
@@ -46,7 +66,7 @@ pub(super) fn run<'a>(
         .map_err(|e| e.downcast::<SolveError>().unwrap_or_else(|e| SolveError::Driver(e.to_string())))?;
     let mut newton = result.solver;
     newton.ended.get_or_insert(Ended::Limit);
-    Ok(Outcome::Ran(Box::new(newton)))
+    Ok(Box::new(newton))
 }
 
 /// Into the ranges, on the restrictions, and to where l is defined.

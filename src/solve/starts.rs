@@ -5,7 +5,7 @@ use super::error::SolveError;
 use super::frame::Frame;
 use super::local::scale;
 use super::newton::{Ended, Known, Newton};
-use super::run::{Outcome, run};
+use super::run::{Outcome, led, run};
 use super::second::second_opinion;
 use super::verdict::{fit, nowhere};
 use super::{Fit, Search, Verdict};
@@ -89,9 +89,28 @@ pub(super) fn maximise(
             }
             _ => {}
         }
+        let mut led_to = None;
+        // the first start is one that somebody or something thought about
+        if at == 0
+            && let Some(newton) = led(&frame, start, search.iterations)?
+        {
+            let strict = fit(&frame, &newton).certificate.verdict == Verdict::StrictMaximum;
+            let answer = findings.sort_in(Outcome::Ran(newton));
+            if strict {
+                landed.push(answer);
+                continue;
+            }
+            led_to = answer;
+        }
         let known = findings.answers.iter().map(|a| (a.newton.point.phi.clone(), a.newton.local.d.clone())).collect();
         let outcome = run(&frame, start, search.iterations, known)?;
-        landed.push(findings.sort_in(outcome));
+        let answer = findings.sort_in(outcome);
+        if let (Some(one), Some(other)) = (led_to, answer)
+            && one == other
+        {
+            findings.answers[one].reached -= 1; // both were one start
+        }
+        landed.push(answer);
     }
     let mut fit = findings.best();
     if search.second_opinion && fit.certificate.verdict == Verdict::StrictMaximum {

@@ -5,11 +5,11 @@ use super::degenerate::{Regularity, regularity};
 use super::differences::derivatives;
 use super::escape::NEGATIVE;
 use super::flat::Split;
-use super::frame::{Frame, infeasibility};
+use super::frame::{Frame, Point, infeasibility};
 use super::local::{Local, scale, stack};
 use super::manifold::Manifold;
 use super::newton::{Ended, Newton};
-use super::rank::Rows;
+use super::rank::{Rows, eigen};
 use super::{Certificate, Edge, End, Fit, Verdict};
 use crate::math::linear::singular_values;
 use crate::math::{Matrix, Vector};
@@ -19,6 +19,8 @@ const FEASIBILITY: f64 = 1e-9;
 const STATIONARITY: f64 = 1e-7;
 const FLAT: f64 = 1e-9;
 const DERIVATIVES: f64 = 1e-5;
+/// Eigenvalues of the tangent model below this part of its largest are not told from rounding.
+const SINGULAR: f64 = 1e-12;
 
 /// d_j = I_jj^-1/2 with I minus the Hessian, 1 where unavailable.
 fn contract_scale(newton: &Newton) -> Vector {
@@ -47,6 +49,12 @@ pub(super) fn fit(frame: &Frame, newton: &Newton) -> Fit {
     );
     redundant.sort_unstable();
     let spectrum = local.spectrum(&rows.z);
+    // Where curves make parameters nearly exchangeable, as where design columns do: by coordinates in which their tangents
+    // are orthogonal.
+    let flat = |s: &(Vec<f64>, Matrix)| s.0.first().zip(s.0.last()).is_some_and(|(low, high)| *low <= FLAT * high);
+    let turned = spectrum.as_ref().filter(|s| flat(s)).and_then(|_| by_tangents(frame, &newton.point, &local));
+    let by_tangents = turned.is_some();
+    let spectrum = turned.or(spectrum);
     let on = Manifold {
         frame,
         d: &d,
@@ -66,6 +74,13 @@ pub(super) fn fit(frame: &Frame, newton: &Newton) -> Fit {
             reason = Some(format!("the exact derivatives differ from differences of the log-likelihood by {x:.1e}"));
         }
         Some(_) => {}
+    }
+    if by_tangents {
+        notes.push(
+            "the parameters can nearly stand in for one another: the curvature is that in coordinates in which the tangents \
+             of the curve are orthogonal"
+                .into(),
+        );
     }
     if frame.likelihood.kink(&newton.point.phi) {
         notes.push("a kink (a tie of abs, min or max) lies at the answer".into());
@@ -105,6 +120,34 @@ pub(super) fn fit(frame: &Frame, newton: &Newton) -> Fit {
         },
         trace: newton.trace.clone(),
     }
+}
+
+/// Curvatures and their directions (by u) in coordinates in which the tangent model is the identity; `None` where l has
+/// none, or it is itself singular to rounding.
+fn by_tangents(frame: &Frame, point: &Point, local: &Local) -> Option<(Vec<f64>, Matrix)> {
+    if frame.map.is_some() {
+        return None;
+    }
+    let tangent = frame.tangent(&point.phi)?;
+    let n = frame.n;
+    // What no square contains keeps its own curvature; so little depends on it that coupling is left out.
+    let model = Matrix::from_fn(n, n, |a, b| {
+        if tangent.inside[a] && tangent.inside[b] {
+            -tangent.hessian[(a, b)] * local.d[a] * local.d[b]
+        } else if a == b {
+            local.w[(a, a)].abs()
+        } else {
+            0.0
+        }
+    });
+    let (values, vectors) = eigen(&model)?;
+    let (low, high) = (*values.first()?, *values.last()?);
+    if low <= SINGULAR * high {
+        return None;
+    }
+    let basis = Matrix::from_fn(n, n, |i, k| vectors[(i, k)] / values[k].sqrt());
+    let rows = stack(frame, &local.j, &local.d, &local.edges()) * &basis;
+    local.spectrum(&(&basis * Rows::of(&rows).z))
 }
 
 /// Verdict with what goes with it.

@@ -12,6 +12,7 @@ mod equivalence;
 mod layers;
 mod many_rows;
 mod nist;
+mod nist_nonlinear;
 mod own_cases;
 mod readme;
 mod refusals;
