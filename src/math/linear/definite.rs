@@ -41,21 +41,10 @@ pub fn positive_definite_inverse(m: &Matrix) -> Option<Matrix> {
     result.iter().all(|v| v.is_finite()).then_some(result)
 }
 
-/// v' M^-1 v for a symmetric positive definite n x n matrix and v of length n; none if it is not positive definite.
-pub fn quadratic_form_inverse(m: &Matrix, v: &Vector) -> Option<f64> {
-    let (factor, scale) = scaled_factor(m)?;
-    if v.len() != m.nrows() {
-        return None;
-    }
-    let mut w = v.component_mul(&scale);
-    // A sum of squares of L^-1 D v: cannot come out negative.
-    factor.l_dirty().solve_lower_triangular_mut(&mut w).then(|| w.norm_squared()).filter(|q| q.is_finite())
-}
-
 #[cfg(test)]
 mod tests {
-    use super::{positive_definite_inverse, quadratic_form_inverse};
-    use crate::math::{Matrix, Vector};
+    use super::positive_definite_inverse;
+    use crate::math::Matrix;
 
     #[test]
     fn units_do_not_matter() {
@@ -69,9 +58,6 @@ mod tests {
             // A well-conditioned 2 x 2 inverse: a few roundings.
             assert!((found / wanted - 1.0).abs() < 4e-15, "{found} {wanted}");
         }
-        let Some(q) = quadratic_form_inverse(&m, &Vector::from_vec(vec![s, 2.0 * t])) else { panic!("definite") };
-        // (3 - 4 + 8) / 5
-        assert!((q - 1.4).abs() < 4e-15);
     }
 
     #[test]
@@ -87,8 +73,6 @@ mod tests {
         ] {
             let m = Matrix::from_row_slice(2, 2, &bad);
             assert!(positive_definite_inverse(&m).is_none(), "{bad:?}");
-            assert!(quadratic_form_inverse(&m, &Vector::from_element(2, 1.0)).is_none());
         }
-        assert_eq!(quadratic_form_inverse(&Matrix::zeros(0, 0), &Vector::zeros(0)), Some(0.0));
     }
 }

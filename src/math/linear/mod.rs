@@ -9,8 +9,8 @@ mod null_space;
 mod orthogonal;
 mod svd;
 
-pub use condition::{centred_condition, scaled_condition};
-pub use definite::{positive_definite_inverse, quadratic_form_inverse};
+pub use condition::scaled_condition;
+pub use definite::positive_definite_inverse;
 pub use eigen::symmetric_eigen;
 pub use null_space::{dependent_rows, null_space};
 pub use orthogonal::{Orthogonal, orthogonalise};

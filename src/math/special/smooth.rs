@@ -28,8 +28,8 @@ pub fn log1p_excess(order: f64, w: f64) -> f64 {
     // e = (1 - f)/w: w e^(m) + m e^(m-1) = -f^(m)
     let f = quotients(w);
     let mut e = (1.0 - f[0]) / w;
-    for m in 1..=order {
-        e = -(f[m] + m as f64 * e) / w;
+    for (m, f) in f.iter().enumerate().take(order + 1).skip(1) {
+        e = -(f + m as f64 * e) / w;
     }
     e
 }
