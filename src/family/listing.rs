@@ -95,7 +95,6 @@ fn plain(name: &str, range: &str, meaning: &str) -> ListedParameter {
 /// All families, sorted by name within kind: of one number, made from the data, mixture and custom.
 pub fn all() -> Vec<Listing> {
     let mut out: Vec<Listing> = FAMILIES.iter().map(|f| Listing::of(f)).collect();
-    out.push(Listing::of(&super::point::POINT));
     out.extend(COMPOSITES.iter().map(|f| Listing::made(f)));
     out.push(Listing {
         name: "mixture".into(),

@@ -261,9 +261,4 @@ impl Family {
     pub fn named(name: &str) -> Option<&'static Family> {
         FAMILIES.iter().copied().find(|f| f.name == name)
     }
-
-    /// The family of this name that a component of a mixture may have.
-    pub fn of_component(name: &str) -> Option<&'static Family> {
-        Family::named(name).or((name == point::POINT.name).then_some(&point::POINT))
-    }
 }

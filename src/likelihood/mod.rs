@@ -23,6 +23,8 @@ mod response;
 mod rows;
 pub mod sample;
 pub mod simulate;
+#[cfg(test)]
+mod simulated_checks;
 mod start;
 mod statement;
 pub mod wanted;

@@ -10,7 +10,7 @@ use super::rows::{FROM, UPTO, table_key};
 use super::statement::Body;
 use super::{LikelihoodError, LogLikelihood, Sample};
 use crate::data::Table;
-use crate::expr::{Graph, Id, Layout, Output, Program, Sign, compile, preparation};
+use crate::expr::{Graph, Id, Layout, Name, Output, Program, Sign, compile, preparation};
 use crate::family::composite::{Drawn, Reads, pick as pick_index};
 use crate::family::{Amounts, Family};
 use crate::math::{Random, Vector};
@@ -327,9 +327,12 @@ fn one(
     if let Body::Composite(f, layout, _) = &template.statement.body {
         if f.reads == Reads::Contest {
             // the two items stand in the table; which of them won is drawn
-            let sign = |s: f64| rows.columns.iter().position(|c| c.1[row] == s).and_then(|k| values.get(k).copied());
-            let pair = [sign(1.0).unwrap_or(0.0), sign(-1.0).unwrap_or(0.0)];
-            return Ok((f.sample)(layout, &pair, random));
+            let Response::Several(names) = &model.response else { return Ok(Drawn::Won(true)) };
+            let strength = |name: &str| {
+                let label = Name::single(label(table, name, shown));
+                layout.pieces.iter().position(|p| *p == label).and_then(|k| values.get(k).copied()).unwrap_or(0.0)
+            };
+            return Ok((f.sample)(layout, &[strength(&names[0]), strength(&names[1])], random));
         }
         return Ok((f.sample)(layout, values, random));
     }
@@ -347,6 +350,15 @@ fn one(
         "line {}: no response can be drawn there; is all of the probability outside what can be recorded?",
         table.line(shown)
     )))
+}
+
+/// The label in a row of a column; numbers are labels too.
+fn label(table: &Table, name: &str, row: usize) -> String {
+    match table.column(name).map(|c| &c.values) {
+        Some(crate::data::Values::Category { codes, levels }) => levels[codes[row] as usize].clone(),
+        Some(crate::data::Values::Number(x)) => x[row].to_string(),
+        None => String::new(),
+    }
 }
 
 /// What was drawn, as columns under the names of the response.
@@ -371,14 +383,9 @@ fn columns(model: &Model, plan: &Plan, table: &Table, drawn: Vec<Drawn>) -> Resu
                 _ => None,
             }),
             Reads::Contest => {
-                let label = |name: &str, row: usize| match table.column(name).map(|c| &c.values) {
-                    Some(crate::data::Values::Category { codes, levels }) => levels[codes[row] as usize].clone(),
-                    Some(crate::data::Values::Number(x)) => x[row].to_string(),
-                    None => String::new(),
-                };
                 let (mut won, mut lost) = (Vec::new(), Vec::new());
                 for (row, d) in drawn.iter().enumerate() {
-                    let (a, b) = (label(&names[0], row), label(&names[1], row));
+                    let (a, b) = (label(table, &names[0], row), label(table, &names[1], row));
                     let first = matches!(d, Drawn::Won(true));
                     let (x, y) = if first { (a, b) } else { (b, a) };
                     won.push(x);

@@ -5,6 +5,7 @@ use super::compose::has_terms;
 use super::model::{Form, Model, Setting};
 use crate::expr::{Ast, Name, nearest, parse_expression};
 use crate::family::composite::{Group, Layout, Made};
+use crate::family::point::POINT;
 use crate::family::{COMPOSITES, Composite, FAMILIES, Family, Given, Link, RowParameter, Support};
 use crate::math::Range;
 
@@ -196,8 +197,8 @@ fn body(model: &Model, layout: Option<Layout>) -> Result<Body, LikelihoodError> 
             let mut parts: Vec<(Name, &'static Family)> = Vec::new();
             for (k, c) in model.components.iter().enumerate() {
                 let place = format!("model.component.{k}.family");
-                let Some(f) = Family::of_component(&c.family) else {
-                    let all = FAMILIES.iter().map(|f| f.name).chain(["point"]).collect();
+                let Some(f) = Family::named(&c.family) else {
+                    let all = FAMILIES.iter().map(|f| f.name).collect();
                     return Err(unknown_family(&c.family, &place, all));
                 };
                 if parts.iter().any(|p| p.0 == Name::single(c.name.as_str())) {
@@ -212,6 +213,11 @@ fn body(model: &Model, layout: Option<Layout>) -> Result<Body, LikelihoodError> 
             Ok(Body::Mixture(parts))
         }
         name => match Family::named(name) {
+            Some(f) if f.name == POINT.name => Err(LikelihoodError::statement(
+                "model.family",
+                "point has nothing to estimate by itself",
+                "use it as the family of a component of a mixture, for values that come up too often",
+            )),
             Some(f) => Ok(Body::Density(f)),
             None => {
                 let mut all: Vec<&str> = FAMILIES.iter().map(|f| f.name).collect();
