@@ -1,5 +1,6 @@
 //! The library of likelihoods: each one room, described as data.
 
+pub mod beta;
 pub mod binomial;
 pub mod categorical;
 pub mod cauchy;
@@ -8,6 +9,7 @@ mod checks;
 pub mod composite;
 pub mod dirichlet;
 pub mod exponential;
+pub mod gamma;
 pub mod generalised_pareto;
 pub mod gev;
 pub mod gumbel;
@@ -28,6 +30,8 @@ pub mod pareto;
 pub mod point;
 pub mod poisson;
 pub mod rayleigh;
+pub mod student_t;
+pub mod von_mises;
 pub mod weibull;
 
 pub use composite::{COMPOSITES, Composite};
@@ -235,9 +239,11 @@ impl Moments {
 
 /// The table: a new family is a room of its own and a row here.
 pub const FAMILIES: &[&Family] = &[
+    &beta::BETA,
     &binomial::BINOMIAL,
     &cauchy::CAUCHY,
     &exponential::EXPONENTIAL,
+    &gamma::GAMMA,
     &generalised_pareto::GENERALISED_PARETO,
     &gev::GEV,
     &gumbel::GUMBEL,
@@ -253,6 +259,8 @@ pub const FAMILIES: &[&Family] = &[
     &point::POINT,
     &poisson::POISSON,
     &rayleigh::RAYLEIGH,
+    &student_t::STUDENT_T,
+    &von_mises::VON_MISES,
     &weibull::WEIBULL,
 ];
 
