@@ -50,6 +50,18 @@ pub(super) struct Formula {
     pub(super) raw: Vec<u32>,
 }
 
+/// Which of a formula's passes.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Which {
+    Value,
+    Gradient,
+    Hessian,
+    Expected,
+    Outer,
+    Tangent,
+    Ties,
+}
+
 /// What a formula is compiled from.
 pub(super) struct Ingredients {
     pub(super) graph: Graph,
@@ -129,6 +141,19 @@ fn tangent(
 }
 
 impl Formula {
+    pub(super) fn which(&self, which: Which) -> Option<&Pass> {
+        match which {
+            Which::Value => Some(&self.value),
+            Which::Gradient => Some(&self.gradient),
+            Which::Hessian => Some(&self.hessian),
+            Which::Expected => self.expected.as_ref(),
+            Which::Outer => Some(&self.outer),
+            // without a bent square the second derivatives are what they are
+            Which::Tangent => Some(self.tangent.as_ref().map_or(&self.hessian, |t| &t.0)),
+            Which::Ties => self.ties.as_ref(),
+        }
+    }
+
     /// Differentiates and compiles.
     pub(super) fn compile(ingredients: Ingredients) -> Formula {
         let Ingredients { mut graph, log_density, variables, expected, mut expectation, weighted } = ingredients;

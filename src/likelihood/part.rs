@@ -4,7 +4,7 @@ use std::ops::Range;
 use std::sync::OnceLock;
 
 use super::expectation::Inputs;
-use super::formula::{Formula, Pass, Slot};
+use super::formula::{Formula, Pass, Slot, Which};
 use super::gram;
 use crate::expr::{BLOCK, Block, Layout, Program, Registers, Store, blocks};
 
@@ -34,33 +34,6 @@ pub(super) struct Part {
     pub(super) inputs: Option<Inputs>,
     /// Products of the Hessian pass that are the same in every pass.
     kept: OnceLock<Vec<f64>>,
-}
-
-/// Which of a formula's passes.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum Which {
-    Value,
-    Gradient,
-    Hessian,
-    Expected,
-    Outer,
-    Tangent,
-    Ties,
-}
-
-impl Formula {
-    pub(super) fn which(&self, which: Which) -> Option<&Pass> {
-        match which {
-            Which::Value => Some(&self.value),
-            Which::Gradient => Some(&self.gradient),
-            Which::Hessian => Some(&self.hessian),
-            Which::Expected => self.expected.as_ref(),
-            Which::Outer => Some(&self.outer),
-            // without a bent square the second derivatives are what they are
-            Which::Tangent => Some(self.tangent.as_ref().map_or(&self.hessian, |t| &t.0)),
-            Which::Ties => self.ties.as_ref(),
-        }
-    }
 }
 
 /// Where the products of design columns stand among a chunk's sums, behind the gathered ones.

@@ -3,8 +3,8 @@
 use rayon::prelude::{IntoParallelIterator, ParallelIterator};
 
 use super::coordinates::Coordinates;
-use super::formula::Formula;
-use super::part::{Part, Which, pairwise};
+use super::formula::{Formula, Which};
+use super::part::{Part, pairwise};
 use super::plan::Bound;
 use super::start;
 use super::{Evaluation, Information, LogLikelihood, Order, Parameter, Tangent};

@@ -14,6 +14,7 @@ mod many_rows;
 mod nist;
 mod nist_nonlinear;
 mod own_cases;
+mod published;
 mod readme;
 mod refusals;
 mod regression;

@@ -1,4 +1,4 @@
-//! The cases of `tests/cases`: sixteen published examples and own ones, each with its sources beside the data and with
+//! The cases of `tests/cases`: seventeen published examples and own ones, each with its sources beside the data and with
 //! answers computed at 50 digits by `tests/reference/solve.py`, which shares nothing with the program.
 //!
 //! Every case runs as a custom density with observed information, and as a library family where one fits.
