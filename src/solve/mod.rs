@@ -49,6 +49,7 @@ pub struct Problem<'a> {
 ///
 /// Newton's iteration on the Lagrangian with exact second derivatives: sequential quadratic steps in the null space
 /// of the restrictions (Nocedal and Wright, *Numerical Optimization*, chapter 18), a filter line search, active edges.
+/// A first start far from the answer of a curve goes by the model of Gauss and Newton until Newton's holds.
 ///
 /// # Errors
 /// A start of the wrong length, or none. Not converging is a verdict of the certificate, with its reason.

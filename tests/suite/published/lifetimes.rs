@@ -1,4 +1,4 @@
-//! Lifetimes and other positive responses: exponential, Weibull, inverse Gaussian, Pareto, Rayleigh.
+//! Lifetimes and other positive responses: exponential, Weibull, gamma, inverse Gaussian, Pareto, Rayleigh.
 
 use super::{estimate, fit, grouped, mean, printed, test};
 
@@ -122,4 +122,18 @@ fn equal_scales_of_rayleigh_samples() {
     let each = |f: &dyn Fn(f64) -> f64| samples.iter().map(|s| s.1.len() as f64 * f(square(s.1) / square(&all))).sum();
     test(&fit, "score", 1.0, each(&|r| (r - 1.0).powi(2)));
     test(&fit, "lr", 1.0, each(&|r| -2.0 * r.ln()));
+}
+
+/// Exponential against gamma: Moran (1951), Journal of the Royal Statistical Society B 13. Invented.
+#[test]
+fn a_gamma_shape_of_one() {
+    let y = [0.4, 2.9, 1.3, 0.7, 3.8, 2.2, 1.9, 0.9, 2.6, 1.1];
+    let data = y.iter().fold("y\n".to_owned(), |out, y| format!("{out}{y}\n"));
+    let study = "[model]\nfamily = \"gamma\"\nresponse = \"y\"\n[tested]\none = \"shape = 1\"\n";
+    let fit = fit(&data, study, &[]);
+    let m = mean(&y);
+    estimate(&fit, "scale", m);
+    let euler = 0.577_215_664_901_532_9;
+    let score = y.iter().map(|y| (y / m).ln()).sum::<f64>() + 10.0 * euler;
+    test(&fit, "score", 1.0, score * score / (10.0 * (std::f64::consts::PI.powi(2) / 6.0 - 1.0)));
 }
