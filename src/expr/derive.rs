@@ -187,6 +187,20 @@ impl Graph {
             Function::LogBesselI0 => self.call(Function::BesselRatio, &[x]),
             Function::BesselRatio => self.call(Function::BesselRatioSlope, &[x]),
             Function::BesselRatioSlope => self.bessel_ratio_curvature(id, x),
+            Function::HypergeometricLogSum if at == 1 => self.next_order(function, arguments, 0, at),
+            Function::HypergeometricLogMass if at == 2 => self.next_order(function, arguments, 0, at),
+            Function::HypergeometricLogTail | Function::LogarithmicLogTail if at == 3 => {
+                self.next_order(function, arguments, 1, at)
+            }
+            Function::NegativeBinomialLogTail if at >= 4 => self.next_order(function, arguments, at - 3, at),
+            Function::BetaBinomialLogTail if at >= 5 => self.next_order(function, arguments, at - 4, at),
+            // counts, sides and orders are given, never estimated
+            Function::HypergeometricLogSum
+            | Function::HypergeometricLogMass
+            | Function::HypergeometricLogTail
+            | Function::NegativeBinomialLogTail
+            | Function::BetaBinomialLogTail
+            | Function::LogarithmicLogTail => self.constant(f64::NAN),
             Function::Deviance if at == 0 => {
                 let (above, below) = (self.call(Function::Log, &[x]), self.call(Function::Log, &[arguments[1]]));
                 self.subtract(above, below)

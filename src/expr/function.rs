@@ -68,6 +68,18 @@ pub enum Function {
     BesselRatio,
     /// `bessel_ratio_slope(x)`, the derivative of that
     BesselRatioSlope,
+    /// `hypergeometric_log_sum(order, t, s, f, n)`, derivatives of log sum_u C(s, u) C(f, n - u) exp(t u)
+    HypergeometricLogSum,
+    /// `hypergeometric_log_mass(order, y, w, s, f, n)`, derivatives in the odds ratio w of its log mass at y
+    HypergeometricLogMass,
+    /// `hypergeometric_log_tail(side, order, y, w, s, f, n)`, of log P(Y <= y) (side 0) or log P(Y > y) (side 1)
+    HypergeometricLogTail,
+    /// `negative_binomial_log_tail(side, i, j, y, mean, k)`
+    NegativeBinomialLogTail,
+    /// `beta_binomial_log_tail(side, i, j, y, n, p, rho)`
+    BetaBinomialLogTail,
+    /// `logarithmic_log_tail(side, order, y, p)`
+    LogarithmicLogTail,
 }
 
 /// One row of the table: the function, its written name, how many arguments (fewest, most), and what it is in words.
@@ -175,6 +187,48 @@ pub const TABLE: &[Entry] = &[
         "derivative of log_bessel_i0: ratio of Bessel functions 1 and 0",
     ),
     Entry(Function::BesselRatioSlope, "bessel_ratio_slope", 1, 1, "derivative of bessel_ratio"),
+    Entry(
+        Function::HypergeometricLogSum,
+        "hypergeometric_log_sum",
+        5,
+        5,
+        "derivative of the given order in t of log(sum over u of C(s, u) C(f, n - u) exp(t u)), (order, t, s, f, n)",
+    ),
+    Entry(
+        Function::HypergeometricLogMass,
+        "hypergeometric_log_mass",
+        6,
+        6,
+        "derivative of the given order in the odds ratio w of log P(Y = y), (order, y, w, successes, failures, draws)",
+    ),
+    Entry(
+        Function::HypergeometricLogTail,
+        "hypergeometric_log_tail",
+        7,
+        7,
+        "the same of log P(Y <= y) (side 0) or log P(Y > y) (side 1), (side, order, y, w, successes, failures, draws)",
+    ),
+    Entry(
+        Function::NegativeBinomialLogTail,
+        "negative_binomial_log_tail",
+        6,
+        6,
+        "derivative of order i in the mean, j in the dispersion of log P(Y <= y) or log P(Y > y), (side, i, j, y, mean, k)",
+    ),
+    Entry(
+        Function::BetaBinomialLogTail,
+        "beta_binomial_log_tail",
+        7,
+        7,
+        "derivative of order i in p, j in rho of log P(Y <= y) or log P(Y > y), (side, i, j, y, trials, p, rho)",
+    ),
+    Entry(
+        Function::LogarithmicLogTail,
+        "logarithmic_log_tail",
+        4,
+        4,
+        "derivative of the given order in p of log P(Y <= y) or log P(Y > y), (side, order, y, p)",
+    ),
 ];
 
 impl Function {

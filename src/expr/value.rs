@@ -53,6 +53,12 @@ impl Function {
             Function::LogBesselI0 => special::log_bessel_i0(a),
             Function::BesselRatio => special::bessel_ratio(a),
             Function::BesselRatioSlope => special::bessel_ratio_slope(a),
+            Function::HypergeometricLogSum => special::hypergeometric_log_sum(a, x[1], x[2], x[3], x[4]),
+            Function::HypergeometricLogMass => special::hypergeometric_log_mass(a, x[1], x[2], x[3], x[4], x[5]),
+            Function::HypergeometricLogTail => special::hypergeometric_log_tail(a, x[1], x[2], x[3], x[4], x[5], x[6]),
+            Function::NegativeBinomialLogTail => special::negative_binomial_log_tail(a, x[1], x[2], x[3], x[4], x[5]),
+            Function::BetaBinomialLogTail => special::beta_binomial_log_tail(a, x[1], x[2], x[3], x[4], x[5], x[6]),
+            Function::LogarithmicLogTail => special::logarithmic_log_tail(a, x[1], x[2], x[3]),
         }
     }
 }

@@ -10,6 +10,7 @@ mod interval;
 mod jet;
 mod logistic;
 mod moments;
+mod mass;
 mod normal;
 #[cfg(test)]
 mod reference;
@@ -23,6 +24,10 @@ pub use incomplete_beta::beta_log_cdf;
 pub use incomplete_gamma::{gamma_log_cdf, gamma_log_survival};
 pub use interval::normal_log_interval;
 pub use logistic::{log_logistic, log_mix, log_sum_exp, log1mexp, logistic, logit};
+pub use mass::{
+    beta_binomial_log_tail, hypergeometric_log_mass, hypergeometric_log_sum, hypergeometric_log_tail,
+    logarithmic_log_tail, negative_binomial_log_tail,
+};
 pub(super) use normal::erfc_scaled_argument;
 pub use normal::{
     erf, erfc, inverse_mills, inverse_mills_slope, normal_cdf, normal_log_cdf, normal_log_density, normal_quantile,

@@ -1,0 +1,162 @@
+//! Tail probabilities of counts by exact sums over the mass, with their derivatives.
+//!
+//! A sum starts at the count that is asked for, where the mass is known in closed form, and goes away from the mean by the ratio
+//! of neighbours; the scores follow by the derivatives of the ratio. With s the score and h its slope at a count, the derivatives
+//! of the logarithm of a sum of f are sum(f s)/sum(f) and sum(f (s s' + h))/sum(f) less the product of the first ones. All is kept
+//! in units of the first term, so that a far tail does not underflow.
+
+mod beta_binomial;
+mod hypergeometric;
+mod logarithmic;
+mod negative_binomial;
+#[cfg(test)]
+mod reference;
+
+pub use beta_binomial::beta_binomial_log_tail;
+pub use hypergeometric::{hypergeometric_log_mass, hypergeometric_log_sum, hypergeometric_log_tail};
+pub use logarithmic::logarithmic_log_tail;
+pub use negative_binomial::negative_binomial_log_tail;
+
+use super::log1mexp;
+
+/// A logarithm and its first and second derivatives in two parameters.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct Jet {
+    value: f64,
+    first: [f64; 2],
+    /// by the first twice, by both, by the second twice
+    second: [f64; 3],
+}
+
+/// The pairs of parameters in [`Jet::second`].
+const PAIRS: [(usize, usize); 3] = [(0, 0), (0, 1), (1, 1)];
+
+impl Jet {
+    const fn constant(value: f64) -> Jet {
+        Jet { value, first: [0.0; 2], second: [0.0; 3] }
+    }
+
+    /// The (i, j)-th derivative; NaN where i + j > 2.
+    fn derivative(&self, i: f64, j: f64) -> f64 {
+        let orders = [(0.0, 0.0), (1.0, 0.0), (0.0, 1.0), (2.0, 0.0), (1.0, 1.0), (0.0, 2.0)];
+        let [s, h] = self.first;
+        let [a, b, c] = self.second;
+        let all = [self.value, s, h, a, b, c];
+        orders.iter().position(|&o| o == (i, j)).map_or(f64::NAN, |at| all[at])
+    }
+
+    /// log(1 - exp(value)).
+    fn complement(&self) -> Jet {
+        let value = log1mexp(-self.value);
+        let odds = libm::exp(self.value - value);
+        let (s, h) = (self.first, self.second);
+        let mut second = [0.0; 3];
+        for (k, &(i, j)) in PAIRS.iter().enumerate() {
+            second[k] = -odds * (h[k] + s[i] * s[j] * (1.0 + odds));
+        }
+        Jet { value, first: [-odds * s[0], -odds * s[1]], second }
+    }
+
+    /// Derivatives in another second parameter u, given dv/du and d2v/du2 of the present one v.
+    fn through(&self, slope: f64, bend: f64) -> Jet {
+        let (s, h) = (self.first, self.second);
+        Jet {
+            value: self.value,
+            first: [s[0], s[1] * slope],
+            second: [h[0], h[1] * slope, h[2] * slope * slope + s[1] * bend],
+        }
+    }
+
+    fn plus(&self, other: &Jet) -> Jet {
+        Jet {
+            value: self.value + other.value,
+            first: [0, 1].map(|i| self.first[i] + other.first[i]),
+            second: [0, 1, 2].map(|k| self.second[k] + other.second[k]),
+        }
+    }
+}
+
+/// A mass on the whole numbers from 0, in two parameters.
+trait Mass {
+    /// The largest count, or infinity.
+    fn last(&self) -> f64;
+    /// Its mean.
+    fn mean(&self) -> f64;
+    /// log f(u).
+    fn at(&self, u: f64) -> Jet;
+    /// f(u + 1) / f(u) itself, and the derivatives of its logarithm.
+    fn rise(&self, u: f64) -> Jet;
+    /// A number that no later ratio in this direction exceeds beside the present one; infinite where nothing is known.
+    fn limit(&self, upward: bool) -> f64;
+}
+
+/// What a sum may leave out, of its value. Scores grow like the distance, so that less is left out than the value alone needs.
+const REST: f64 = 1e-21;
+
+/// log of the sum of f from a count on, upward to the last or downward to 0.
+fn sum(mass: &impl Mass, from: f64, upward: bool) -> Jet {
+    if from < 0.0 || from > mass.last() {
+        return Jet::constant(f64::NEG_INFINITY);
+    }
+    let start = mass.at(from);
+    if !start.value.is_finite() {
+        return start;
+    }
+    let limit = mass.limit(upward);
+    let (mut u, mut term) = (from, 1.0);
+    // scores less the first one, so that large ones do not cancel
+    let (mut s, mut h) = ([0.0; 2], start.second);
+    let (mut total, mut first, mut second) = (0.0, [0.0; 2], [0.0; 3]);
+    loop {
+        total += term;
+        for i in 0..2 {
+            first[i] += term * s[i];
+        }
+        for (k, &(i, j)) in PAIRS.iter().enumerate() {
+            second[k] += term * (s[i] * s[j] + h[k]);
+        }
+        if u == (if upward { mass.last() } else { 0.0 }) {
+            break;
+        }
+        let (rise, sign) = if upward { (mass.rise(u), 1.0) } else { (mass.rise(u - 1.0), -1.0) };
+        let ratio = if upward { rise.value } else { 1.0 / rise.value };
+        let bound = ratio.max(limit);
+        term *= ratio;
+        if (bound < 1.0 && term <= REST * total * (1.0 - bound)) || !(term > 0.0) {
+            break;
+        }
+        u += sign;
+        for i in 0..2 {
+            s[i] += sign * rise.first[i];
+        }
+        for k in 0..3 {
+            h[k] += sign * rise.second[k];
+        }
+    }
+    let first = first.map(|x| x / total);
+    let mut out = Jet {
+        value: start.value + libm::log(total),
+        first: [0, 1].map(|i| start.first[i] + first[i]),
+        second: [0.0; 3],
+    };
+    for (k, &(i, j)) in PAIRS.iter().enumerate() {
+        out.second[k] = second[k] / total - first[i] * first[j];
+    }
+    out
+}
+
+/// log P(Y <= y), or log P(Y > y) where `above`, at a whole number y. The side away from the mean is summed, unless it holds more
+/// than half of the mass; the other is its complement.
+fn tail(mass: &impl Mass, above: bool, y: f64) -> Jet {
+    if y < 0.0 || y >= mass.last() {
+        let certain = above == (y < 0.0);
+        return Jet::constant(if certain { 0.0 } else { f64::NEG_INFINITY });
+    }
+    let side = |above: bool| if above { sum(mass, y + 1.0, true) } else { sum(mass, y, false) };
+    let far = y >= mass.mean();
+    let one = side(far);
+    if one.value > -std::f64::consts::LN_2 || one.value == f64::NEG_INFINITY {
+        return if above == far { one } else { side(above) };
+    }
+    if above == far { one } else { one.complement() }
+}
