@@ -1,6 +1,6 @@
 //! Binomial distribution of successes among trials.
 
-use super::{Amounts, Family, Information, Link, Moments, RowParameter, Support};
+use super::{Amounts, Distribution, Family, Information, Link, Moments, RowParameter, Support};
 use crate::math::{Random, Range};
 
 /// The family.
@@ -15,11 +15,22 @@ pub const BINOMIAL: Family = Family {
         "probability of a success in one trial",
     )],
     amounts: &["trials"],
-    log_density: "y * log(probability) + (trials - y) * log1p(-probability) + lgamma(trials + 1) - lgamma(y + 1) - lgamma(trials - y + 1)",
-    distribution: None,
+    log_density: "-deviance(y, trials * probability) - deviance(trials - y, trials * (1 - probability)) \
+        + factorial_remainder(trials) - factorial_remainder(y) - factorial_remainder(trials - y)",
+    // the last two counts of either side with the slopes that belong to them at probability 0 or 1
+    distribution: Some(Distribution {
+        below: "if(at < 0, log(0), if(at >= trials, 0, if(at < 2, \
+            (trials - at) * log1p(-probability) + log1p(at * (trials - 1) * probability), \
+            beta_log_cdf(0, 0, trials - at, at + 1, 1 - probability, probability))))",
+        above: "if(at < 0, 0, if(at >= trials, log(0), if(at >= trials - 2, \
+            (at + 1) * log(probability) + log1p((trials - 1 - at) * (trials - 1) * (1 - probability)), \
+            beta_log_cdf(0, 0, at + 1, trials - at, probability, 1 - probability))))",
+        between: None,
+    }),
     information: Information::Closed(&[("probability", "probability", "trials / (probability * (1 - probability))")]),
     information_note: "closed form",
-    source: "Johnson, Kemp and Kotz, Univariate Discrete Distributions, ch. 3",
+    source: "Johnson, Kemp and Kotz, Univariate Discrete Distributions, ch. 3; in deviances after Loader (2000), Fast and accurate computation of \
+        binomial probabilities",
     start,
     sample,
     concave: true,

@@ -1,6 +1,7 @@
 //! The library of likelihoods: each one room, described as data.
 
 pub mod beta;
+pub mod beta_binomial;
 pub mod binomial;
 pub mod categorical;
 pub mod cauchy;
@@ -11,18 +12,22 @@ pub mod dirichlet;
 pub mod exponential;
 pub mod gamma;
 pub mod generalised_pareto;
+pub mod geometric;
 pub mod gev;
 pub mod gumbel;
 pub mod gumbel_smallest;
 pub mod half_normal;
+pub mod hypergeometric;
 pub mod inverse_gaussian;
 pub mod laplace;
 pub mod link;
 pub mod listing;
 pub mod log_logistic;
+pub mod logarithmic;
 pub mod logistic;
 pub mod lognormal;
 pub mod multivariate_normal;
+pub mod negative_binomial;
 pub mod normal;
 pub mod ordered;
 pub mod paired_comparison;
@@ -33,6 +38,7 @@ pub mod rayleigh;
 pub mod student_t;
 pub mod von_mises;
 pub mod weibull;
+pub mod zero_truncated_poisson;
 
 pub use composite::{COMPOSITES, Composite};
 pub use link::Link;
@@ -240,20 +246,25 @@ impl Moments {
 /// The table: a new family is a room of its own and a row here.
 pub const FAMILIES: &[&Family] = &[
     &beta::BETA,
+    &beta_binomial::BETA_BINOMIAL,
     &binomial::BINOMIAL,
     &cauchy::CAUCHY,
     &exponential::EXPONENTIAL,
     &gamma::GAMMA,
     &generalised_pareto::GENERALISED_PARETO,
+    &geometric::GEOMETRIC,
     &gev::GEV,
     &gumbel::GUMBEL,
     &gumbel_smallest::GUMBEL_SMALLEST,
     &half_normal::HALF_NORMAL,
+    &hypergeometric::HYPERGEOMETRIC,
     &inverse_gaussian::INVERSE_GAUSSIAN,
     &laplace::LAPLACE,
     &log_logistic::LOG_LOGISTIC,
+    &logarithmic::LOGARITHMIC,
     &logistic::LOGISTIC,
     &lognormal::LOGNORMAL,
+    &negative_binomial::NEGATIVE_BINOMIAL,
     &normal::NORMAL,
     &pareto::PARETO,
     &point::POINT,
@@ -262,6 +273,7 @@ pub const FAMILIES: &[&Family] = &[
     &student_t::STUDENT_T,
     &von_mises::VON_MISES,
     &weibull::WEIBULL,
+    &zero_truncated_poisson::ZERO_TRUNCATED_POISSON,
 ];
 
 impl Family {

@@ -1,5 +1,6 @@
 //! Tests by a loop over the table of families, so that a new room is tested by being listed.
 
+mod edges;
 mod mass;
 mod quadrature;
 mod reference;

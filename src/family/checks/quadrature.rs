@@ -32,6 +32,7 @@ pub(super) fn support(f: &Family, log: &Scalars, theta: &[f64]) -> Vec<(f64, f64
             out
         }
         Support::CountOfTrials => (0..=AMOUNTS.trials as i32).map(|k| (f64::from(k), 1.0)).collect(),
+        Support::CountFromOne => (1..600).map(|k| (f64::from(k), 1.0)).collect(),
         _ => (0..600).map(|k| (f64::from(k), 1.0)).collect(),
     }
 }

@@ -9,8 +9,8 @@ mod incomplete_gamma;
 mod interval;
 mod jet;
 mod logistic;
-mod moments;
 mod mass;
+mod moments;
 mod normal;
 #[cfg(test)]
 mod reference;
