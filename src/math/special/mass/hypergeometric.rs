@@ -93,7 +93,7 @@ struct Hypergeometric {
 impl Hypergeometric {
     fn new(w: f64, s: f64, f: f64, n: f64) -> Option<Hypergeometric> {
         let counts = [s, f, n].iter().all(|&x| x >= 0.0 && x == x.floor() && x < 9e15);
-        if !counts || n > s + f || !(w >= 0.0 && w < f64::INFINITY) {
+        if !counts || n > s + f || !(0.0..f64::INFINITY).contains(&w) {
             return None;
         }
         let (low, high) = ((n - f).max(0.0), s.min(n));
@@ -162,7 +162,7 @@ impl Hypergeometric {
                 }
                 let ratio = if upward { self.w * self.ratio(v) } else { 1.0 / (self.w * self.ratio(v - 1.0)) };
                 term *= ratio;
-                if (ratio < 1.0 && term <= super::REST * total * (1.0 - ratio)) || !(term > 0.0) {
+                if (ratio < 1.0 && term <= super::REST * total * (1.0 - ratio)) || term == 0.0 || term.is_nan() {
                     break;
                 }
                 v += if upward { 1.0 } else { -1.0 };

@@ -122,16 +122,12 @@ fn sum(mass: &impl Mass, from: f64, upward: bool) -> Jet {
         let ratio = if upward { rise.value } else { 1.0 / rise.value };
         let bound = ratio.max(limit);
         term *= ratio;
-        if (bound < 1.0 && term <= REST * total * (1.0 - bound)) || !(term > 0.0) {
+        if (bound < 1.0 && term <= REST * total * (1.0 - bound)) || term == 0.0 || term.is_nan() {
             break;
         }
         u += sign;
-        for i in 0..2 {
-            s[i] += sign * rise.first[i];
-        }
-        for k in 0..3 {
-            h[k] += sign * rise.second[k];
-        }
+        s = [0, 1].map(|i| s[i] + sign * rise.first[i]);
+        h = [0, 1, 2].map(|k| h[k] + sign * rise.second[k]);
     }
     let first = first.map(|x| x / total);
     let mut out = Jet {

@@ -53,7 +53,8 @@ fn every_function_agrees_with_its_reference() {
             let found = evaluate(&arguments);
             let plain = arguments[orders.clone()].iter().all(|&o| o == 0.0);
             let tolerance = if plain { value * wanted.abs().max(1.0) } else { derivative * wanted.abs() + 1e-13 };
-            if !((found - wanted).abs() <= tolerance) {
+            let close = (found - wanted).abs() <= tolerance;
+            if !close {
                 let error = (found - wanted).abs() / wanted.abs();
                 faults
                     .push(format!("{name}{arguments:?}: found {found:e}, wanted {wanted:e}, off by {error:.1e} of it"));
