@@ -200,9 +200,9 @@ mod tests {
             value.clone().prop_map(|a| at(Kind::Negate(boxed(a)))),
             (prop::sample::select(operators.to_vec()), value.clone(), value.clone())
                 .prop_map(|(o, a, b)| at(Kind::Binary(o, boxed(a), boxed(b)))),
-            (0..TABLE.len(), prop::collection::vec(value.clone(), 6)).prop_map(|(i, arguments)| {
+            (0..TABLE.len(), prop::collection::vec(value.clone(), 8)).prop_map(|(i, arguments)| {
                 let entry = &TABLE[i];
-                let count = if entry.3 > 6 { entry.2.max(4) } else { entry.3 };
+                let count = if entry.3 > 8 { entry.2.max(4) } else { entry.3 };
                 at(Kind::Call(entry.0, arguments[..count].to_vec()))
             }),
             (condition, value.clone(), value).prop_map(|(c, a, b)| at(Kind::If(boxed(c), boxed(a), boxed(b)))),
