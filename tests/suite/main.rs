@@ -6,9 +6,12 @@ mod tiles;
 
 mod harness;
 
+
+
 mod bad_input;
 mod datasets;
 mod equivalence;
+mod families;
 mod layers;
 mod many_rows;
 mod nist;
