@@ -1,5 +1,7 @@
 //! The model in one sentence.
 
+use crate::family::Composite;
+use crate::family::composite::Reads;
 use crate::likelihood::Model;
 use crate::likelihood::model::{Amount, Component, Form, Response, Setting};
 
@@ -9,7 +11,11 @@ pub fn sentence(model: &Model) -> String {
         Response::None => format!("a {} density", model.family),
         Response::Column(column) => format!("{column}: {}", model.family),
         Response::Ends { lower, upper } => format!("a response between {lower} and {upper}: {}", model.family),
-        Response::Several(columns) => format!("{}: {}", columns.join(" x "), model.family),
+        Response::Several(columns) => match Composite::named(&model.family).map(|f| f.reads) {
+            Some(Reads::Labels) => format!("{}: {}", columns.join(" x "), model.family),
+            Some(Reads::Contest) => format!("{}: {}", columns.join(" against "), model.family),
+            _ => format!("{}: {}", list(columns), model.family),
+        },
     };
     if !model.components.is_empty() {
         let parts: Vec<String> = model.components.iter().map(component).collect();

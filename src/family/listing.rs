@@ -104,7 +104,7 @@ pub fn all() -> Vec<Listing> {
             plain("NAME.PARAMETER", "as in the component's family", "parameter of the component, known or estimated"),
         ],
         formula: "log_mix(share.A, log density of A, share.B, log density of B, ...)".into(),
-        information: "observed".into(),
+        information: "observed; expected on request, by sum over the support or by adaptive quadrature to 1e-9".into(),
         source: "Hathaway (1985), Annals of Statistics 13, on its maxima".into(),
     });
     out.push(Listing {
@@ -112,7 +112,7 @@ pub fn all() -> Vec<Listing> {
         response: "whatever the formula names".into(),
         parameters: vec![plain("NAME", "as stated", "each table in [model]; needs a start")],
         formula: "log_density of the study".into(),
-        information: "observed".into(),
+        information: "observed; with [model.support] expected on request, by sum over the support or by adaptive quadrature to 1e-9".into(),
         source: "the user's".into(),
     });
     out

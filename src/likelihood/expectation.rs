@@ -6,15 +6,15 @@ use std::collections::HashMap;
 use rayon::prelude::{IntoParallelIterator, ParallelIterator};
 
 use super::LikelihoodError;
+use super::axes::Axis;
 use super::compose::Template;
 use super::formula::Pass;
 use super::model::{Amount, Values};
 use super::part::Part;
-use super::rows::{FROM, RowKind, UPTO, Y, table_key};
+use super::rows::{FROM, RowKind, UPTO};
 use super::statement::Body;
 use crate::expr::{Graph, Id, Layout, Output, Program, Sign, Variable, compile, preparation};
 use crate::family::Support;
-use crate::family::point::POINT;
 use crate::math::Matrix;
 use crate::math::quadrature::integrate;
 
@@ -28,19 +28,6 @@ const STRETCH: usize = 128;
 const MOST_TERMS: usize = 20_000_000;
 /// Quantiles of the response that part the range of an integral.
 const BREAKS: [f64; 7] = [0.001, 0.05, 0.25, 0.5, 0.75, 0.95, 0.999];
-
-/// One variable of the response: its raw column, and the values that it takes.
-#[derive(Debug, Clone)]
-struct Axis {
-    column: u32,
-    values: Taken,
-}
-
-#[derive(Debug, Clone)]
-enum Taken {
-    Stated(Values),
-    Of(Vec<Support>),
-}
 
 /// What the expectation over one kind of row is computed from.
 #[derive(Debug, Clone)]
@@ -59,11 +46,11 @@ pub(super) struct Expectation {
     raw: Vec<u32>,
     axes: Vec<Axis>,
     /// Raw columns that bound the response, by what they are.
-    bounds: HashMap<&'static str, u32>,
+    pub(super) bounds: HashMap<&'static str, u32>,
     /// The same where they are numbers.
-    numbers: HashMap<&'static str, f64>,
+    pub(super) numbers: HashMap<&'static str, f64>,
     /// Index among the quantities of a known threshold.
-    threshold: Option<usize>,
+    pub(super) threshold: Option<usize>,
 }
 
 /// The rows of a part as expectations see them.
@@ -157,38 +144,6 @@ impl Template<'_> {
         }))
     }
 
-    fn axes(&self) -> Result<Option<Vec<Axis>>, LikelihoodError> {
-        match &self.statement.body {
-            Body::Density(_) | Body::Mixture(_) => {
-                let supports = self.statement.supports();
-                // a lump of mass among densities has no place in an integral
-                let lump = self.model.components.iter().any(|c| c.family == POINT.name);
-                if lump && !self.statement.counts() {
-                    return Ok(None);
-                }
-                // a known threshold of a component bounds nothing for the others
-                let mixed = supports.len() > 1 && supports.iter().any(|s| matches!(s, Support::From(_)));
-                let column = self.rows.column(Y).map(|c| c.0);
-                Ok(column.filter(|_| !mixed).map(|column| vec![Axis { column, values: Taken::Of(supports) }]))
-            }
-            Body::Custom(_) if !self.model.support.is_empty() => {
-                let mut axes = Vec::new();
-                for (name, values) in &self.model.support {
-                    let Some((column, _)) = self.rows.column(&table_key(name)) else {
-                        return Err(LikelihoodError::statement(
-                            "model.support",
-                            format!("{name} is no column that log_density names"),
-                            "the support says which values a response in log_density can take",
-                        ));
-                    };
-                    axes.push(Axis { column, values: Taken::Stated(values.clone()) });
-                }
-                Ok(Some(axes))
-            }
-            _ => Ok(None),
-        }
-    }
-
     /// What the expectation needs of some rows.
     pub(super) fn inputs(&self, expectation: &Expectation, members: &[usize]) -> Inputs {
         let axis = |c: u32| expectation.axes.iter().any(|a| a.column == c);
@@ -211,7 +166,7 @@ impl Template<'_> {
 }
 
 /// What is known of one row: the quantities, then the input columns.
-type Row = Vec<f64>;
+pub(super) type Row = Vec<f64>;
 
 impl Expectation {
     /// Compiles values and slopes of the quantities in the graph of the formula that this belongs to.
@@ -308,48 +263,10 @@ impl Expectation {
         (rows, which, outputs)
     }
 
-    fn input(&self, row: &Row, inputs: &Inputs, column: u32) -> f64 {
+    pub(super) fn input(&self, row: &Row, inputs: &Inputs, column: u32) -> f64 {
         let mut keys: Vec<u32> = inputs.columns.keys().copied().collect();
         keys.sort_unstable();
         keys.iter().position(|&k| k == column).map_or(f64::NAN, |k| row[self.quantities + k])
-    }
-
-    /// The values that an axis takes in a row.
-    fn taken(&self, axis: &Axis, row: &Row, inputs: &Inputs) -> Values {
-        let amount = |key: &str, otherwise: f64| match (self.bounds.get(key), self.numbers.get(key)) {
-            (Some(&c), _) => self.input(row, inputs, c),
-            (None, Some(&n)) => n,
-            (None, None) => otherwise,
-        };
-        let supports = match &axis.values {
-            Taken::Stated(values) => return values.clone(),
-            Taken::Of(supports) => supports,
-        };
-        let (from, upto) = (amount(FROM, f64::NEG_INFINITY), amount(UPTO, f64::INFINITY));
-        let one = |s: &Support| -> (f64, f64) {
-            match s {
-                Support::Real => (f64::NEG_INFINITY, f64::INFINITY),
-                Support::Angle => (-std::f64::consts::PI, std::f64::consts::PI),
-                Support::Nonnegative | Support::Positive => (0.0, f64::INFINITY),
-                Support::Unit => (0.0, 1.0),
-                Support::From(_) => (self.threshold.map_or(0.0, |q| row[q]), f64::INFINITY),
-                Support::Count => (0.0, f64::INFINITY),
-                Support::CountFromOne => (1.0, f64::INFINITY),
-                Support::CountOfTrials => (0.0, amount("trials", 1.0)),
-                Support::Draws => {
-                    let (n, s, f) = (amount("trials", 1.0), amount("successes", 0.0), amount("failures", 0.0));
-                    ((n - f).max(0.0), n.min(s))
-                }
-            }
-        };
-        let counts = supports.iter().any(|s| s.is_count());
-        let ends = supports.iter().filter(|s| !counts || s.is_count()).map(one);
-        let (low, high) = ends.reduce(|a, b| (a.0.min(b.0), a.1.max(b.1))).unwrap_or((0.0, 0.0));
-        if counts {
-            Values::Whole(low.max(from + 1.0), high.min(upto))
-        } else {
-            Values::Interval(low.max(from), high.min(upto))
-        }
     }
 
     /// Mass, then E[s s'] if asked for, of a row; `None` where an integral does not reach its error.

@@ -1,5 +1,6 @@
 //! Family, design and table joined: value, gradient, Hessian, per-row scores and information of the log-likelihood.
 
+mod axes;
 #[cfg(test)]
 mod checks;
 pub mod closure;
@@ -17,6 +18,7 @@ mod labels;
 pub mod model;
 mod numbering;
 mod part;
+mod part_rows;
 mod plan;
 pub mod prepare;
 mod response;

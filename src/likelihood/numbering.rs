@@ -139,7 +139,12 @@ pub(super) fn number_coefficients(
                 Some(own) => own.then(&c.key).to_string(),
                 None => c.key.to_string(),
             };
-            let meaning = design::meaning(&row.name.to_string(), p.local.link, &p.terms, table, c);
+            // where the predictor itself is the log odds of a label, its meaning says more than its name
+            let what = match row.about.meaning.starts_with("log odds") {
+                true => row.about.meaning.clone(),
+                false => row.name.to_string(),
+            };
+            let meaning = design::meaning(&what, p.local.link, &p.terms, table, c);
             bound.push(numbering.enter(
                 full_name(prefix, &row.name.clone().then(&c.key)),
                 keyed(&p.setting.range, Some(&key)).unwrap_or(Range::ALL),

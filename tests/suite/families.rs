@@ -49,7 +49,9 @@ fn alike(what: &str, folder: &Folder, one: &str, other: &str, tolerance: f64) ->
         "/tests/wald/chi_square",
     ] {
         let (x, y) = (a.number(pointer), b.number(pointer));
-        let (Some(x), Some(y)) = (x, y) else { panic!("{what}: {pointer} {x:?} and {y:?}\n{}{}", a.warnings(), b.warnings()) };
+        let (Some(x), Some(y)) = (x, y) else {
+            panic!("{what}: {pointer} {x:?} and {y:?}\n{}{}", a.warnings(), b.warnings())
+        };
         assert!(near(x, y, tolerance, tolerance), "{what}: {pointer} {x} and {y}");
     }
     (a, b)
@@ -77,10 +79,18 @@ fn two_labels_are_a_binomial_whatever_the_family_of_labels() {
         )
     };
     let (a, b) = alike("categorical", &folder, binomial, &of("categorical", "share", "share.pass.x"), 1e-9);
-    close("x", b.estimate("restricted", "share.pass.intercept", "se"), a.estimate("restricted", "probability.intercept", "se").unwrap());
+    close(
+        "x",
+        b.estimate("restricted", "share.pass.intercept", "se"),
+        a.estimate("restricted", "probability.intercept", "se").unwrap(),
+    );
     let (a, b) = alike("ordered", &folder, binomial, &of("ordered_logit", "location", "location.x"), 1e-9);
     // P(fail) = logistic(cut - location): the cut is minus the intercept
-    close("cut", b.estimate("restricted", "cut.fail", "value"), -a.estimate("restricted", "probability.intercept", "value").unwrap());
+    close(
+        "cut",
+        b.estimate("restricted", "cut.fail", "value"),
+        -a.estimate("restricted", "probability.intercept", "value").unwrap(),
+    );
     let probit = binomial.replace("terms=['x']", "terms=['x']\nlink='probit'");
     alike("ordered probit", &folder, &probit, &of("ordered_probit", "location", "location.x"), 1e-9);
 }
@@ -141,7 +151,8 @@ fn two_shares_are_a_beta_and_independent_columns_are_normals() {
         .unzip();
     let mean = |x: &[f64]| x.iter().sum::<f64>() / x.len() as f64;
     let (mu, mv) = (mean(&u), mean(&v));
-    let cross = |x: &[f64], a: f64, y: &[f64], b: f64| x.iter().zip(y).map(|(x, y)| (x - a) * (y - b)).sum::<f64>() / 150.0;
+    let cross =
+        |x: &[f64], a: f64, y: &[f64], b: f64| x.iter().zip(y).map(|(x, y)| (x - a) * (y - b)).sum::<f64>() / 150.0;
     let (suu, svv, suv) = (cross(&u, mu, &u, mu), cross(&v, mv, &v, mv), cross(&u, mu, &v, mv));
     folder.write("d.csv", csv(&[("u", text(u)), ("v", text(v))]));
     let f = folder.fit(
@@ -193,7 +204,11 @@ fn what_could_not_be_recorded_is_conditioned_on() {
         "[data]\nfile='d.csv'\n[model]\nfamily='zero_truncated_poisson'\nresponse='y'\n[tested]\nt='rate=1.9'\n",
         1e-8,
     );
-    close("se", a.estimate("unrestricted", "rate", "se").map(|x| (1e7 * x).round()), (1e7 * b.estimate("unrestricted", "rate", "se").unwrap()).round());
+    close(
+        "se",
+        a.estimate("unrestricted", "rate", "se").map(|x| (1e7 * x).round()),
+        (1e7 * b.estimate("unrestricted", "rate", "se").unwrap()).round(),
+    );
     let y: Vec<f64> = (0..300).map(|_| s.normal()).filter(|y| *y > -0.5 && *y < 1.5).collect();
     folder.write("d.csv", csv(&[("y", text(y))]));
     alike(
@@ -204,9 +219,15 @@ fn what_could_not_be_recorded_is_conditioned_on() {
          m={start=0}\ns={start=1,range='(0,inf)'}\n[tested]\nt='m=0.1'\n",
         1e-8,
     );
-    let outside = folder.run(&["fit", "--data", "d.csv", "--family", "normal", "--response", "y", "--with", "model.above=0"]);
+    let outside =
+        folder.run(&["fit", "--data", "d.csv", "--family", "normal", "--response", "y", "--with", "model.above=0"]);
     assert_eq!(outside.status, 3);
-    assert!(outside.err.contains("d.csv, line ") && outside.err.contains("expected a value that could be recorded: above 0"), "{}", outside.err);
+    assert!(
+        outside.err.contains("d.csv, line ")
+            && outside.err.contains("expected a value that could be recorded: above 0"),
+        "{}",
+        outside.err
+    );
 }
 
 #[test]
@@ -224,7 +245,13 @@ fn bins_of_one_value_are_values() {
     );
     // counts in bins (both ends belong) are cells with shares from the distribution function
     let count = |a: f64, b: f64| y.iter().filter(|v| **v >= a && **v <= b).count();
-    let rows = format!("lo,hi,n\n,1,{}\n2,3,{}\n4,5,{}\n6,,{}\n", count(0.0, 1.0), count(2.0, 3.0), count(4.0, 5.0), count(6.0, 99.0));
+    let rows = format!(
+        "lo,hi,n\n,1,{}\n2,3,{}\n4,5,{}\n6,,{}\n",
+        count(0.0, 1.0),
+        count(2.0, 3.0),
+        count(4.0, 5.0),
+        count(6.0, 99.0)
+    );
     folder.write("b.csv", rows);
     let f = folder.fit(
         "[data]\nfile='b.csv'\nweight='n'\n[model]\nfamily='poisson'\nresponse_lower='lo'\nresponse_upper='hi'\n[tested]\nt='rate=3'\n",
@@ -311,7 +338,10 @@ fn edges_and_ends_are_said_to_be_that() {
         f
     };
     // counts that vary less than Poisson ones: the dispersion is at its edge, zero
-    folder.write("d.csv", csv(&[("y", text((0..60).map(|i| 4.0 + f64::from(i % 3)).collect())), ("n", text(vec![10.0; 60]))]));
+    folder.write(
+        "d.csv",
+        csv(&[("y", text((0..60).map(|i| 4.0 + f64::from(i % 3)).collect())), ("n", text(vec![10.0; 60]))]),
+    );
     let head = "[data]\nfile='d.csv'\n[model]\nresponse='y'\n";
     let f = warns(&format!("{head}family='negative_binomial'\n[tested]\nt='mean=5.5'\n"), "nuisance-on-edge");
     assert_eq!(f.verdict(), "strict maximum");
@@ -320,13 +350,17 @@ fn edges_and_ends_are_said_to_be_that() {
     // pull at the edge: sum((y - m)^2 - y) / 2 (Dean and Lawless 1989, Journal of the American Statistical Association 84)
     let pull: f64 = (0..60).map(|i| (f64::from(i % 3) - 1.0).powi(2) - 4.0 - f64::from(i % 3)).sum::<f64>() / 2.0;
     close("pull", f.tested("value")[0], pull);
-    let f = warns(&format!("{head}family='beta_binomial'\ntrials='n'\n[tested]\nt='overdispersion=0'\n"), "tested-on-edge");
+    let f =
+        warns(&format!("{head}family='beta_binomial'\ntrials='n'\n[tested]\nt='overdispersion=0'\n"), "tested-on-edge");
     // its binomial limit: sum of ((y - n p)^2 - n p q - (1 - 2p)(y - n p)) / (2 p q) at p = 1/2 (Tarone 1979, Biometrika 66)
     let pull: f64 = (0..60).map(|i| (f64::from(i % 3) - 1.0).powi(2) - 2.5).sum::<f64>() / 0.5;
     close("beta-binomial pull", f.tested("value")[0], pull);
     // a share of zero
     folder.write("d.csv", "g,n\na,0\nb,12\nc,30\n");
-    let f = warns("[data]\nfile='d.csv'\nweight='n'\n[data.category]\ng=['a','b','c']\n[model]\nfamily='categorical'\nresponse='g'\n[tested]\nt='share.b=0.3'\n", "nuisance-on-edge");
+    let f = warns(
+        "[data]\nfile='d.csv'\nweight='n'\n[data.category]\ng=['a','b','c']\n[model]\nfamily='categorical'\nresponse='g'\n[tested]\nt='share.b=0.3'\n",
+        "nuisance-on-edge",
+    );
     assert_eq!(f.estimate("restricted", "share.a", "value"), Some(0.0));
     // perfect correlation and complete separation have no maximum
     folder.write("d.csv", "a,b,g\n1,2,low\n2,4,low\n3,6,mid\n4,8,mid\n7,14,high\n9,18,high\n");

@@ -6,8 +6,6 @@ mod tiles;
 
 mod harness;
 
-
-
 mod bad_input;
 mod datasets;
 mod equivalence;
