@@ -324,8 +324,10 @@ fn mixture(shape: &Shape, levels: usize) -> Option<Mixture> {
                 .filter_map(|(row, _)| shape.locals.iter().position(|l| l.row == Some(row)))
                 .map(|i| shape.bound_locals[level][i])
                 .collect();
-            let spread = family.parameters.iter().position(|p| p.name == "sd").and_then(|s| own.get(s).copied());
-            components.push((name.to_string(), family.name, share, own, spread));
+            // where every parameter is plain, its place among them is that in the family
+            let spread = ["sd", "scale"].iter().find_map(|s| at(&name.clone().dot(*s)));
+            let spread = spread.map(|i| shape.bound_locals[level][i]);
+            components.push((name.to_string(), *family, share, own, spread));
         }
         let sd = shape.rows.moments(shape.rows.members[level].iter().copied(), None).variance.sqrt();
         out.push(components, sd);

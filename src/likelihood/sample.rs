@@ -8,7 +8,8 @@ use super::part::{Part, pairwise};
 use super::plan::Bound;
 use super::start;
 use super::{Evaluation, Information, LogLikelihood, Order, Parameter, Tangent};
-use crate::math::{Matrix, Vector};
+use crate::family::{Amounts, Family};
+use crate::math::{Matrix, Random, Vector};
 
 /// A log-likelihood over the rows of a table.
 #[derive(Debug)]
@@ -42,10 +43,44 @@ pub(super) struct Mixture {
 #[derive(Debug, Clone)]
 struct Component {
     name: String,
-    family: &'static str,
+    family: &'static Family,
     share: Option<Bound>,
+    /// Its plain parameters.
     own: Vec<Bound>,
+    /// Standard deviation or scale, if it is a plain parameter.
     spread: Option<Bound>,
+}
+
+/// Draws from which the spread of a component is judged.
+const SPREAD_DRAWS: usize = 201;
+/// Quartiles of a normal distribution lie this many standard deviations apart.
+const QUARTILE_RANGE: f64 = 1.349;
+
+impl Component {
+    /// Whether anything but its place is estimated.
+    fn is_free(&self) -> bool {
+        let place = matches!(self.family.parameters[0].name, "mean" | "location");
+        self.own.iter().skip(usize::from(place)).any(|b| matches!(b, Bound::Free(_)))
+    }
+
+    /// How far apart the values of the component lie, as a standard deviation; `None` for counts, which cannot collapse, and
+    /// where its parameters differ between rows and it has no plain spread.
+    fn spread(&self, value: &dyn Fn(&Bound) -> f64) -> Option<f64> {
+        if self.family.support.is_count() || self.own.is_empty() {
+            return None;
+        }
+        if self.own.len() < self.family.parameters.len() {
+            return self.spread.as_ref().map(value);
+        }
+        let parameters: Vec<f64> = self.own.iter().map(value).collect();
+        let amounts = Amounts { exposure: 1.0, trials: 1.0, successes: 0.0, failures: 0.0 };
+        // the same stream each time: only the parameters matter
+        let mut random = Random::new(1, 0);
+        let mut y: Vec<f64> =
+            (0..SPREAD_DRAWS).map(|_| (self.family.sample)(&parameters, &amounts, &mut random)).collect();
+        y.sort_by(f64::total_cmp);
+        Some((y[3 * SPREAD_DRAWS / 4] - y[SPREAD_DRAWS / 4]) / QUARTILE_RANGE)
+    }
 }
 
 /// Rows that starts are tried on; a likelihood is thinned when it has several times as many.
@@ -64,7 +99,7 @@ impl Mixture {
     #[allow(clippy::type_complexity, reason = "handed over once, by the one caller")]
     pub(super) fn push(
         &mut self,
-        components: Vec<(String, &'static str, Option<Bound>, Vec<Bound>, Option<Bound>)>,
+        components: Vec<(String, &'static Family, Option<Bound>, Vec<Bound>, Option<Bound>)>,
         sd: f64,
     ) {
         let list = components
@@ -239,19 +274,17 @@ impl LogLikelihood for Sample {
         let mut gradient = None;
         for (components, sd) in &mixture.levels {
             for c in components {
-                let free = c.own.iter().any(|b| matches!(b, Bound::Free(_)));
-                if !free {
+                if !c.own.iter().any(|b| matches!(b, Bound::Free(_))) {
                     continue;
                 }
-                if let Some(spread) = &c.spread
-                    && at(spread) < COLLAPSED_SPREAD * sd
-                {
+                let spread = c.spread(&at);
+                if spread.is_some_and(|s| s < COLLAPSED_SPREAD * sd) {
                     return Some(c.name.clone());
                 }
                 if let Some(Bound::Free(i)) = c.share {
                     // the responsibilities of a component sum to share * dl / dshare
                     let g = gradient.get_or_insert_with(|| self.run(Which::Gradient, phi.as_slice()).1);
-                    if c.spread.is_some_and(|s| matches!(s, Bound::Free(_))) && phi[i] * g[i] < COLLAPSED_WEIGHT {
+                    if spread.is_some() && c.is_free() && phi[i] * g[i] < COLLAPSED_WEIGHT {
                         return Some(c.name.clone());
                     }
                 }
@@ -315,9 +348,9 @@ impl LogLikelihood for Sample {
                     for b in &c.own {
                         all.push(index(&Some(*b))?);
                     }
-                    Some((c.family, all))
+                    Some((c.family.name, all))
                 })
-                .filter(|(family, _)| components.iter().filter(|c| c.family == *family).count() > 1)
+                .filter(|(family, _)| components.iter().filter(|c| c.family.name == *family).count() > 1)
                 .map(|(_, all)| all)
                 .collect();
             if alike.len() < 2 || alike.len() > 5 || alike.iter().any(|a| a.len() != alike[0].len()) {

@@ -99,7 +99,7 @@ fn form(table: &Table) -> Result<Form, Fault> {
                 .advise("add terms = [\"COLUMN\"] (or [] for an intercept alone)"));
         }
         return match table.node("curve") {
-            Some(curve) => Ok(Form::Curve(curve.text("curve", "an expression")?)),
+            Some(curve) => Ok(Form::Curve(super::model::piece("curve", curve)?)),
             None => Ok(Form::Plain),
         };
     };
