@@ -1,7 +1,7 @@
 //! Laplace (double exponential) distribution.
 //!
 //! The density has a kink at its median. Where the location meets a response, the derivative is that of one side; the
-//! certificate counts such ties, and a kink with slopes of opposite sign is a maximum like any other.
+//! certificate counts such ties.
 
 use super::{Amounts, Distribution, Family, Information, Link, Moments, RowParameter, Support};
 use crate::math::{Random, Range};
