@@ -6,6 +6,7 @@
 mod counts;
 mod lifetimes;
 mod normals;
+mod overdispersed;
 mod regressions;
 mod several_columns;
 mod tables;

@@ -89,7 +89,7 @@ fn an_odds_ratio() {
 
 /// Admissions of men and women in six departments (Bickel, Hammel and O'Connell 1975, Science 187; from memory):
 /// (men admitted, men, women admitted, women).
-const ADMISSIONS: [(&str, [f64; 4]); 6] = [
+pub const ADMISSIONS: [(&str, [f64; 4]); 6] = [
     ("a", [512.0, 825.0, 89.0, 108.0]),
     ("b", [353.0, 560.0, 17.0, 25.0]),
     ("c", [120.0, 325.0, 202.0, 593.0]),
