@@ -32,6 +32,7 @@ const TEXTS: &[&str] = &[
     "beta_log_cdf(0, 0, a, b, x / 3, 1 - x / 3) + beta_log_cdf(0, 0, a * x, b / a, logistic(b - a), logistic(a - b))",
     "beta_log_cdf(1, 0, x, y + 1, a / 2, 1 - a / 2) + beta_log_cdf(0, 1, x, 2, 1 - a / 2, a / 2)",
     "beta_log_cdf(1, 1, x, y + 1, a / 2, 1 - a / 2) + beta_log_cdf(2, 0, x, 2, b / 4, 1 - b / 4) * beta_log_cdf(0, 2, x, 2, a / 4, 1 - a / 4)",
+    "log_bessel_i0_scaled(a * x) * b",
     "log_bessel_i0(a * x) - bessel_ratio(b * y) * bessel_ratio(20 * a * b * x)",
 ];
 

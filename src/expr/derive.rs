@@ -185,6 +185,11 @@ impl Graph {
             Function::GammaLogCdf | Function::GammaLogSurvival => self.gamma_tail_by_x(id, function, arguments),
             Function::BetaLogCdf => self.beta_tail_by(id, arguments, at),
             Function::LogBesselI0 => self.call(Function::BesselRatio, &[x]),
+            // for x >= 0, as the function is used
+            Function::LogBesselI0Scaled => {
+                let ratio = self.call(Function::BesselRatio, &[x]);
+                self.sum(-1.0, &[(ratio, 1.0)])
+            }
             Function::BesselRatio => self.call(Function::BesselRatioSlope, &[x]),
             Function::BesselRatioSlope => self.bessel_ratio_curvature(id, x),
             Function::HypergeometricLogSum if at == 1 => self.next_order(function, arguments, 0, at),

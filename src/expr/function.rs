@@ -64,6 +64,8 @@ pub enum Function {
     BetaLogCdf,
     /// `log_bessel_i0(x)` = log I_0(x)
     LogBesselI0,
+    /// `log_bessel_i0_scaled(x)` = log I_0(x) - x, x >= 0
+    LogBesselI0Scaled,
     /// `bessel_ratio(x)` = I_1(x) / I_0(x), its derivative
     BesselRatio,
     /// `bessel_ratio_slope(x)`, the derivative of that
@@ -179,6 +181,7 @@ pub const TABLE: &[Entry] = &[
          x, 1 - x)",
     ),
     Entry(Function::LogBesselI0, "log_bessel_i0", 1, 1, "log of the modified Bessel function of order 0"),
+    Entry(Function::LogBesselI0Scaled, "log_bessel_i0_scaled", 1, 1, "log_bessel_i0(x) - x, accurate for large x >= 0"),
     Entry(
         Function::BesselRatio,
         "bessel_ratio",

@@ -51,6 +51,7 @@ impl Function {
             Function::GammaLogSurvival => special::gamma_log_survival(a, x[1], x[2]),
             Function::BetaLogCdf => special::beta_log_cdf(a, x[1], x[2], x[3], x[4], x[5]),
             Function::LogBesselI0 => special::log_bessel_i0(a),
+            Function::LogBesselI0Scaled => special::log_bessel_i0_scaled(a),
             Function::BesselRatio => special::bessel_ratio(a),
             Function::BesselRatioSlope => special::bessel_ratio_slope(a),
             Function::HypergeometricLogSum => special::hypergeometric_log_sum(a, x[1], x[2], x[3], x[4]),

@@ -143,18 +143,13 @@ fn start(_: &Layout, summary: &Summary) -> Vec<f64> {
 
 fn sample(layout: &Layout, values: &[f64], random: &mut Random) -> Drawn {
     let p = layout.pieces.len();
+    // where the correlation of columns i < j stands among the values
+    let place = |i: usize, j: usize| 2 * p + i * p - i * (i + 1) / 2 + j - i - 1;
     let mut l = vec![vec![0.0; p]; p];
-    let mut at = 2 * p;
-    let mut r = vec![vec![1.0; p]; p];
-    for i in 0..p {
-        for j in i + 1..p {
-            (r[i][j], r[j][i]) = (values[at], values[at]);
-            at += 1;
-        }
-    }
     for i in 0..p {
         for j in 0..=i {
-            let rest: f64 = r[i][j] - (0..j).map(|k| l[i][k] * l[j][k]).sum::<f64>();
+            let r = if i == j { 1.0 } else { values[place(j, i)] };
+            let rest: f64 = r - (0..j).map(|k| l[i][k] * l[j][k]).sum::<f64>();
             l[i][j] = if i == j { rest.sqrt() } else { rest / l[j][j] };
         }
     }

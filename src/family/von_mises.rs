@@ -19,7 +19,7 @@ pub const VON_MISES: Family = Family {
         ),
     ],
     amounts: &[],
-    log_density: "concentration * cos(y - mean) - log_bessel_i0(concentration) - log(2 * pi)",
+    log_density: "-2 * concentration * sin((y - mean) / 2)^2 - log_bessel_i0_scaled(concentration) - log(2 * pi)",
     distribution: None,
     information: Information::Closed(&[
         ("mean", "mean", "concentration * bessel_ratio(concentration)"),

@@ -204,7 +204,7 @@ impl Custom {
             |points: &[f64], weights: &[f64], random: &mut Random| points.get(pick_index(weights, random)).copied();
         let mass = |points: &[f64]| -> Vec<f64> {
             let log = self.log_density(template, row, values, points);
-            log.into_iter().map(|l| libm::exp(l)).map(|f| if f.is_finite() { f } else { 0.0 }).collect()
+            log.into_iter().map(libm::exp).map(|f| if f.is_finite() { f } else { 0.0 }).collect()
         };
         match &self.axes[0].1 {
             Values::List(list) => pick(list, &mass(list), random),

@@ -154,14 +154,11 @@ impl Panel {
         let found = f(&at);
         let mut out = Sums { fine: vec![0.0; count], coarse: vec![0.0; count], size: vec![0.0; count] };
         for ((_, w, even), y) in points.iter().zip(&found) {
-            for i in 0..count {
-                let v = w * y[i];
-                if v.is_finite() {
-                    out.fine[i] += v;
-                    out.size[i] += v.abs();
-                    if *even {
-                        out.coarse[i] += 2.0 * v;
-                    }
+            for (i, v) in y.iter().map(|y| w * y).enumerate().filter(|(_, v)| v.is_finite()) {
+                out.fine[i] += v;
+                out.size[i] += v.abs();
+                if *even {
+                    out.coarse[i] += 2.0 * v;
                 }
             }
         }

@@ -249,6 +249,10 @@ fn judge(
         return Judged { verdict: Verdict::StrictMaximum, ..Judged::default() };
     };
     if low < -NEGATIVE * largest {
+        // far out, where l has all but stopped rising, the curvature that is left is rounding
+        if !still {
+            return runs_off(newton, frame, newton.swiftest(), None);
+        }
         return Judged::of(
             Verdict::Saddle,
             "the log-likelihood curves upwards along a free direction, and following it led nowhere".into(),

@@ -215,7 +215,7 @@ fn what_could_not_be_recorded_is_conditioned_on() {
         "normal between two ends",
         &folder,
         "[data]\nfile='d.csv'\n[model]\nfamily='normal'\nresponse='y'\nabove=-0.5\nbelow=1.5\n[tested]\nt='mean=0.1'\n[options]\ninformation='observed'\n",
-        "[data]\nfile='d.csv'\n[model]\nfamily='custom'\nlog_density='-log(s) - ((y-m)/s)^2/2 - log(2*pi)/2 - log(normal_cdf((1.5-m)/s) - normal_cdf((-0.5-m)/s))'\n\
+        "[data]\nfile='d.csv'\n[model]\nfamily='custom'\nlog_density='-log(s) - ((y-m)/s)^2/2 - log(2*pi)/2 - normal_log_interval((-0.5-m)/s, (1.5-m)/s)'\n\
          m={start=0}\ns={start=1,range='(0,inf)'}\n[tested]\nt='m=0.1'\n",
         1e-8,
     );

@@ -44,6 +44,15 @@ pub fn log_bessel_i0(x: f64) -> f64 {
     if x == f64::INFINITY { x } else { x + libm::log(uniform(0.0, x).1) }
 }
 
+/// log(exp(-|x|) I_0(x)): what [`log_bessel_i0`] is beside |x|, without the digits that the difference loses far out.
+pub fn log_bessel_i0_scaled(x: f64) -> f64 {
+    let x = x.abs();
+    if x < FAR {
+        return libm::log1p(series_rest(0.0, x)) - x;
+    }
+    if x == f64::INFINITY { f64::NEG_INFINITY } else { libm::log(uniform(0.0, x).1) }
+}
+
 /// I_1(x) / I_0(x), odd in x, the derivative of [`log_bessel_i0`]: relative error 1e-15 or so.
 ///
 /// By the continued fraction x/(2 + x^2/(4 + x^2/(6 + ...))), far out by its asymptotic series.

@@ -17,7 +17,7 @@ mod reference;
 mod smooth;
 mod stirling;
 
-pub use bessel::{bessel_i, bessel_ratio, bessel_ratio_slope, log_bessel_i0};
+pub use bessel::{bessel_i, bessel_ratio, bessel_ratio_slope, log_bessel_i0, log_bessel_i0_scaled};
 pub use counts::{deviance, factorial_remainder};
 pub use gamma::{digamma, lgamma, polygamma};
 pub use incomplete_beta::beta_log_cdf;

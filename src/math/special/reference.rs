@@ -59,6 +59,8 @@ const FUNCTIONS: &[(&str, Evaluate, Scale, f64)] = &[
     ("gamma_log_survival", |a| gamma_log_survival(a[0], a[1], a[2]), Mixed, 1e-13),
     ("beta_log_cdf", |a| beta_log_cdf(a[0], a[1], a[2], a[3], a[4], a[5]), Mixed, 1e-12),
     ("log_bessel_i0", |a| log_bessel_i0(a[0]), Relative, 2e-15),
+    // below 40 the difference from x is taken
+    ("log_bessel_i0_scaled", |a| log_bessel_i0_scaled(a[0]), Mixed, 2e-14),
     ("bessel_ratio", |a| bessel_ratio(a[0]), Relative, 2e-15),
     // Near x = 20 the two parts of the slope are about forty times their sum.
     ("bessel_ratio_slope", |a| bessel_ratio_slope(a[0]), Relative, 2e-14),
