@@ -308,6 +308,6 @@ for x in [0.0, 1e-300, 1e-10, 1e-3, 0.5, 1.0, 2.0, 5.0, 10.0, 19.99, 20.0, 20.01
     with m.workdps(70 + int(abs(x) / 2)):
         ratio = m.besseli(1, mpf(x)) / m.besseli(0, mpf(x))
         row("log_bessel_i0", [x], m.log(m.besseli(0, mpf(x))))
-        row("log_bessel_i0_scaled", [x], m.log(m.besseli(0, mpf(x))) - mpf(x))
+        row("log_bessel_i0_scaled", [x], m.log(m.besseli(0, mpf(x))) - abs(mpf(x)))
         row("bessel_ratio", [x], ratio)
         row("bessel_ratio_slope", [x], 1 - ratio / x - ratio ** 2 if x else mpf("0.5"))
