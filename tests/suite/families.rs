@@ -209,13 +209,13 @@ fn what_could_not_be_recorded_is_conditioned_on() {
         a.estimate("unrestricted", "rate", "se").map(|x| (1e7 * x).round()),
         (1e7 * b.estimate("unrestricted", "rate", "se").unwrap()).round(),
     );
-    let y: Vec<f64> = (0..300).map(|_| s.normal()).filter(|y| *y > -0.5 && *y < 1.5).collect();
+    let y: Vec<f64> = (0..300).map(|_| s.normal()).filter(|y| *y > -1.5 && *y < 2.5).collect();
     folder.write("d.csv", csv(&[("y", text(y))]));
     alike(
         "normal between two ends",
         &folder,
-        "[data]\nfile='d.csv'\n[model]\nfamily='normal'\nresponse='y'\nabove=-0.5\nbelow=1.5\n[tested]\nt='mean=0.1'\n[options]\ninformation='observed'\n",
-        "[data]\nfile='d.csv'\n[model]\nfamily='custom'\nlog_density='-log(s) - ((y-m)/s)^2/2 - log(2*pi)/2 - normal_log_interval((-0.5-m)/s, (1.5-m)/s)'\n\
+        "[data]\nfile='d.csv'\n[model]\nfamily='normal'\nresponse='y'\nabove=-1.5\nbelow=2.5\n[tested]\nt='mean=0.1'\n[options]\ninformation='observed'\n",
+        "[data]\nfile='d.csv'\n[model]\nfamily='custom'\nlog_density='-log(s) - ((y-m)/s)^2/2 - log(2*pi)/2 - normal_log_interval((-1.5-m)/s, (2.5-m)/s)'\n\
          m={start=0}\ns={start=1,range='(0,inf)'}\n[tested]\nt='m=0.1'\n",
         1e-8,
     );
