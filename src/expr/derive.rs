@@ -9,7 +9,7 @@ impl Graph {
         if let Some(&known) = self.derivatives.get(&(id, by)) {
             return known;
         }
-        let out = self.differentiate(id, by);
+        let out = if by == Variable::Node(id) { self.constant(1.0) } else { self.differentiate(id, by) };
         self.derivatives.insert((id, by), out);
         out
     }
@@ -19,14 +19,6 @@ impl Graph {
         let (mut todo, mut seen, mut out) = (vec![id], vec![id], Vec::new());
         while let Some(id) = todo.pop() {
             let node = self.node(id).clone();
-            let below: Vec<Id> = match &node {
-                Node::Sum(_, t) | Node::Product(t) => t.iter().map(|&(i, _)| i).collect(),
-                Node::Call(_, a) | Node::Shift(a) => a.to_vec(),
-                Node::Choice(a, b, c) => vec![*a, *b, *c],
-                Node::Power(a, b) | Node::Compare(_, a, b) | Node::And(a, b) | Node::Or(a, b) => vec![*a, *b],
-                Node::Not(a) => vec![*a],
-                Node::Constant(_) | Node::Column(_) | Node::Parameter(_) | Node::Predictor(_) => Vec::new(),
-            };
             match &node {
                 Node::Call(Function::Abs, a) => {
                     let zero = self.constant(0.0);
@@ -44,7 +36,7 @@ impl Graph {
                 }
                 _ => {}
             }
-            for b in below {
+            for b in self.below(id) {
                 if !seen.contains(&b) && !self.class(b).is_fixed() {
                     seen.push(b);
                     todo.push(b);

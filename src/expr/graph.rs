@@ -112,6 +112,8 @@ pub enum Variable {
     Parameter(u32),
     /// A linear predictor: one value a row.
     Predictor(u32),
+    /// Another node, as if it were free.
+    Node(Id),
 }
 
 /// A growing set of nodes.
@@ -473,7 +475,7 @@ impl Graph {
     }
 
     /// The shift of a log-sum-exp over these.
-    fn shift(&mut self, of: &[Id]) -> Id {
+    pub(super) fn shift(&mut self, of: &[Id]) -> Id {
         if of.iter().all(|&i| self.class(i) == Class::NOTHING) {
             let top = of.iter().filter_map(|&i| self.as_constant(i)).fold(f64::NEG_INFINITY, f64::max);
             return self.constant(if top == f64::NEG_INFINITY { 0.0 } else { top });

@@ -12,6 +12,7 @@ mod derive;
 mod derive_tail;
 mod emit;
 pub mod error;
+mod fold;
 pub mod function;
 pub mod graph;
 pub mod kernel;

@@ -42,6 +42,8 @@ pub(super) fn nearest(
     let mut out = fit.clone();
     out.phi = likelihood.coordinates().phi(&theta);
     out.theta = theta;
+    // components are exchanged as they are named, which working coordinates of theirs are too
+    out.slope = fit.slope.as_ref().map(|s| s.select_rows(&order));
     for edge in &mut out.edges {
         edge.parameter = order.iter().position(|&old| old == edge.parameter).unwrap_or(edge.parameter);
     }
@@ -53,7 +55,8 @@ pub(super) fn nearest(
 fn multipliers(likelihood: &dyn LogLikelihood, held: &System, fit: &Fit) -> Vector {
     let m = held.items().len();
     let n = fit.phi.len();
-    let gradient = likelihood.evaluate(&fit.phi, crate::likelihood::Order::Gradient).gradient;
+    let here = || likelihood.evaluate(&fit.phi, crate::likelihood::Order::Gradient).gradient;
+    let gradient = fit.slope.clone().unwrap_or_else(here);
     let mut rows = Matrix::zeros(m + fit.edges.len(), n);
     rows.rows_mut(0, m).copy_from(&held.jacobian(&fit.theta));
     for (i, edge) in fit.edges.iter().enumerate() {

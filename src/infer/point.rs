@@ -69,7 +69,8 @@ impl<'a> Point<'a> {
             .map(|(_, e)| e.clone())
             .collect();
         let held = stack(&maintained, &edge_rows(likelihood, &edges));
-        let mut gradient = evaluation.gradient;
+        // At a kink the slope that the first-order conditions hold with, not that of one side.
+        let mut gradient = fit.slope.clone().unwrap_or(evaluation.gradient);
         if gradient.iter().any(|x| !x.is_finite()) {
             // A parameter that cannot move takes part in no direction; its slope must not become 0 times infinity.
             let pinned = pinned(&held, gradient.len());

@@ -3,6 +3,7 @@
 use std::collections::{BTreeMap, HashMap};
 
 use super::LikelihoodError;
+use super::fold::Folds;
 use super::formula::{Formula, Ingredients};
 use super::model::{Amount, Form, Model};
 use super::rows::{FROM, LOWER, RowKind, Rows, UPPER, UPTO, Y, table_key};
@@ -78,14 +79,20 @@ impl Template<'_> {
             true => self.expectation(&graph, known, &local_nodes, &row_nodes)?,
             false => None,
         };
-        Ok(Formula::compile(Ingredients {
+        let weighted = self.rows.weights.is_some();
+        let columns = self.rows.columns.len() as u32;
+        let found = Folds::of(&mut graph, log_density, &variables, columns, weighted);
+        let formula = Formula::compile(Ingredients {
             graph,
             log_density,
             variables,
             expected,
             expectation,
-            weighted: self.rows.weights.is_some(),
-        }))
+            weighted,
+            heights: found.heights,
+            slopes: found.slopes,
+        });
+        Ok(Formula { folds: found.folds, ..formula })
     }
 
     /// Whether the density is the user's, so that its mass has to be looked at.

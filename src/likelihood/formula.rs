@@ -1,6 +1,7 @@
 //! The programs of one kind of row: value, gradient, Hessian and the two sums of information, compiled from one graph.
 
 use super::expectation::Expectation;
+use super::fold::Folds;
 use crate::expr::{Graph, Id, Layout, Output, Program, Variable, compile, preparation};
 
 /// Where an entry of a gradient or a symmetric matrix comes from.
@@ -43,6 +44,12 @@ pub(super) struct Formula {
     pub(super) ties: Option<Pass>,
     /// log f row by row.
     pub(super) rows: Pass,
+    /// The places where log f has a kink, if it has any.
+    pub(super) folds: Option<Box<Folds>>,
+    /// Row by row: u of each fold with the slope of log f in abs(u).
+    pub(super) heights: Pass,
+    /// Row by row: u of each fold and its derivatives.
+    pub(super) slopes: Pass,
     pub(super) layout: Layout,
     /// Computes the layout's columns and fixed sums, from raw columns.
     pub(super) preparation: Program,
@@ -74,6 +81,9 @@ pub(super) struct Ingredients {
     /// What expected information is computed from otherwise.
     pub(super) expectation: Option<Expectation>,
     pub(super) weighted: bool,
+    /// Row outputs of the folds.
+    pub(super) heights: Vec<Id>,
+    pub(super) slopes: Vec<Id>,
 }
 
 struct Compiler<'a> {
@@ -156,7 +166,8 @@ impl Formula {
 
     /// Differentiates and compiles.
     pub(super) fn compile(ingredients: Ingredients) -> Formula {
-        let Ingredients { mut graph, log_density, variables, expected, mut expectation, weighted } = ingredients;
+        let Ingredients { mut graph, log_density, variables, expected, mut expectation, weighted, heights, slopes } =
+            ingredients;
         let n = variables.len();
         let first: Vec<Id> = variables.iter().map(|&v| graph.derivative(log_density, v)).collect();
         let mut second = Vec::with_capacity(n * (n + 1) / 2);
@@ -183,6 +194,11 @@ impl Formula {
             program: compile(c.graph, &mut c.layout, &[Output::Row(log_density)], predictors, weighted),
             ..Pass::default()
         };
+        let [heights, slopes] = [heights, slopes].map(|list| {
+            let outputs: Vec<Output> = list.into_iter().map(Output::Row).collect();
+            let program = compile(c.graph, &mut c.layout, &outputs, predictors, weighted);
+            Pass { program, ..Pass::default() }
+        });
         let mut layout = c.layout;
         if let Some(e) = &mut expectation {
             e.compile(&mut graph, &mut layout, &variables, weighted);
@@ -199,6 +215,9 @@ impl Formula {
             tangent,
             ties,
             rows,
+            folds: None,
+            heights,
+            slopes,
             layout,
             preparation,
             raw,

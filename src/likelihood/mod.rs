@@ -12,8 +12,10 @@ mod design;
 mod designs;
 pub mod error;
 mod expectation;
+mod fold;
 mod formula;
 mod gram;
+pub mod kinks;
 mod labels;
 pub mod model;
 mod numbering;
@@ -34,6 +36,7 @@ pub mod wanted;
 pub use closure::FromFunctions;
 pub use coordinates::Coordinates;
 pub use error::LikelihoodError;
+pub use kinks::{Kink, Place, Residuals};
 pub use model::Model;
 pub use prepare::prepare;
 pub use sample::Sample;
@@ -146,6 +149,10 @@ pub trait LogLikelihood: Sync {
     /// How far the total mass of the density is from one at most, over some of the rows; `None` where that is not in
     /// question, or nothing says which values the response takes.
     fn mass_error(&self, _phi: &Vector) -> Option<f64> {
+        None
+    }
+    /// The sample behind it, if its log-likelihood has kinks (`abs(u)` of something estimated) that a maximum can sit on.
+    fn kinked(&self) -> Option<&Sample> {
         None
     }
     /// Whether a kink (a tie of abs, min, max) lies at this point.

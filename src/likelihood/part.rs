@@ -1,18 +1,19 @@
 //! One part of the rows, all of one kind and with one set of parameters, bound to its formula.
 
 use std::ops::Range;
-use std::sync::OnceLock;
+use std::sync::{Arc, OnceLock};
 
 use super::expectation::Inputs;
 use super::formula::{Formula, Pass, Slot, Which};
 use super::gram;
+use super::kinks::Raw;
 use crate::expr::{BLOCK, Block, Registers, Store, blocks};
 
 /// Blocks in a chunk: 16,384 rows. Chunks are summed pairwise, so the order of additions does not depend on threads.
 pub(super) const CHUNK: usize = 32;
 
 /// A linear predictor over the rows of a part.
-#[derive(Debug, Default)]
+#[derive(Debug, Clone, Default)]
 pub(super) struct Predictor {
     pub(super) columns: Vec<Vec<Block>>,
     pub(super) offset: Option<Vec<Block>>,
@@ -21,7 +22,7 @@ pub(super) struct Predictor {
 }
 
 /// Rows, their columns, and which free parameters they speak of.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub(super) struct Part {
     /// Which formula.
     pub(super) formula: usize,
@@ -32,6 +33,8 @@ pub(super) struct Part {
     pub(super) predictors: Vec<Predictor>,
     /// What expectations over the rows need, where there are any.
     pub(super) inputs: Option<Inputs>,
+    /// The rows as they were given, where the formula has folds.
+    pub(super) raw: Option<Arc<Raw>>,
     /// Products of the Hessian pass that are the same in every pass.
     kept: OnceLock<Vec<f64>>,
 }
@@ -100,7 +103,7 @@ impl Part {
         let gathered = pairwise(chunks, program.gathers());
         let fixed = program.finish(&scalars, &gathered, &[]);
         let store = Store { columns, weights: source.weights, rows };
-        Part { formula: index, store, fixed, map, predictors, inputs: None, kept: OnceLock::new() }
+        Part { formula: index, store, fixed, map, predictors, inputs: None, raw: None, kept: OnceLock::new() }
     }
 
     /// How many rows.
@@ -141,6 +144,7 @@ impl Part {
                 .collect(),
             // starts need no expectation
             inputs: None,
+            raw: None,
             kept: OnceLock::new(),
         }
     }

@@ -1,6 +1,7 @@
 //! Model and table to a [`Sample`]: free parameters are numbered, designs made, rows parted by kind and level.
 
 use std::collections::HashMap;
+use std::sync::Arc;
 
 use super::compose::{Local, LocalPredictor, Template};
 use super::designs::{Designs, designs};
@@ -13,7 +14,7 @@ use super::rows::{self, RowKind, Rows};
 use super::sample::{Mixture, Sample};
 use super::start::{self, Shape};
 use super::statement::{Body, Statement};
-use super::{Coordinates, LikelihoodError, labels};
+use super::{Coordinates, LikelihoodError, kinks, labels};
 use crate::data::Table;
 use crate::expr::{Name, blocks};
 use crate::family::Support;
@@ -219,6 +220,7 @@ pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> 
             plan.predictors_of(level as usize, &members),
         );
         part.inputs = inputs;
+        part.raw = kinks::Raw::keep(&formulas[formula], &template, &members, weights.as_deref()).map(Arc::new);
         parts.push(part);
     }
     let shape = Shape {

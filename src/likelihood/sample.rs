@@ -12,7 +12,7 @@ use crate::family::{Amounts, Family};
 use crate::math::{Matrix, Random, Vector};
 
 /// A log-likelihood over the rows of a table.
-#[derive(Debug)]
+#[derive(Debug, Clone)]
 pub struct Sample {
     pub(super) parameters: Vec<Parameter>,
     pub(super) known: Vec<(String, f64)>,
@@ -308,6 +308,10 @@ impl LogLikelihood for Sample {
             worst = Some(worst.map_or(found, |w| if found > w || found.is_nan() { found } else { w }));
         }
         worst
+    }
+
+    fn kinked(&self) -> Option<&Sample> {
+        self.parts.iter().any(|p| p.raw.is_some()).then_some(self)
     }
 
     fn kink(&self, phi: &Vector) -> bool {

@@ -79,6 +79,7 @@ pub(super) fn good(names: &[&str]) -> Document {
         theta,
         log_likelihood: -77.3655441898635,
         multipliers: Vector::from_vec(vec![240.0, -41.23]),
+        slope: None,
         edges: vec![Edge { parameter: n - 1, end: End::Lower, multiplier: -3.5 }],
         redundant: Vec::new(),
         certificate: certificate(Verdict::StrictMaximum),

@@ -12,6 +12,7 @@ mod escape;
 mod filter;
 mod flat;
 mod frame;
+mod kinks;
 mod local;
 mod manifold;
 mod newton;
@@ -21,6 +22,7 @@ mod restore;
 mod run;
 mod second;
 mod starts;
+mod ties;
 mod verdict;
 
 #[cfg(test)]
@@ -107,6 +109,9 @@ pub struct Fit {
     pub log_likelihood: f64,
     /// One multiplier a restriction, in the order of the system; 0 for one dropped as redundant.
     pub multipliers: Vector,
+    /// Where the maximum sits at a kink of l: the slope of l by phi, among those between its two sides, with which the
+    /// first-order conditions hold.
+    pub slope: Option<Vector>,
     /// Active edges.
     pub edges: Vec<Edge>,
     /// Indices of restrictions that depend on the others at the answer (redundant).

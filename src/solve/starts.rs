@@ -6,9 +6,9 @@ use super::frame::Frame;
 use super::local::scale;
 use super::newton::{Ended, Known, Newton};
 use super::run::{Outcome, led, run};
-use super::second::second_opinion;
+use super::second::{Opinion, second_opinion};
 use super::verdict::{fit, nowhere};
-use super::{Fit, Search, Verdict};
+use super::{Fit, Search, Verdict, kinks};
 use crate::likelihood::LogLikelihood;
 use crate::math::Vector;
 
@@ -58,6 +58,11 @@ pub(super) fn maximise(
         return Err(SolveError::StartLength { found: wrong.len(), expected: frame.n });
     }
     let Some(first) = starts.first() else { return Err(SolveError::NoStart) };
+    if let Some(sample) = likelihood.kinked()
+        && let Some(fit) = kinks::maximise(sample, equations, search, &starts)?
+    {
+        return Ok(fit);
+    }
     let first = first.clone();
     let thin = if count > 1 { likelihood.thinned() } else { None };
     let fates = match &thin {
@@ -327,6 +332,11 @@ impl<'a> Findings<'a> {
 fn ask(frame: &Frame, fit: &mut Fit) {
     let Some(point) = frame.point(&fit.phi) else { return };
     let opinion = second_opinion(frame, &point.phi, point.value, &scale(&point), &point.jacobian);
+    heed(frame, fit, &opinion);
+}
+
+/// Enters a second opinion.
+pub(super) fn heed(frame: &Frame, fit: &mut Fit, opinion: &Opinion) {
     let certificate = &mut fit.certificate;
     certificate.second_opinion = Some(opinion.agrees);
     if !opinion.agrees {

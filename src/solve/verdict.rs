@@ -94,6 +94,7 @@ pub(super) fn fit(frame: &Frame, newton: &Newton) -> Fit {
         theta: newton.point.theta.clone(),
         log_likelihood: newton.point.value,
         multipliers: local.lambda.clone(),
+        slope: None,
         edges: named_edges(frame, &local),
         redundant,
         certificate: Certificate {
@@ -341,7 +342,7 @@ fn named_edges(frame: &Frame, local: &Local) -> Vec<Edge> {
 }
 
 /// Condition number of the independent rows, each of length one.
-fn condition(a: &Matrix, rows: &Rows) -> Option<f64> {
+pub(super) fn condition(a: &Matrix, rows: &Rows) -> Option<f64> {
     if rows.kept.is_empty() {
         return None;
     }
@@ -389,6 +390,7 @@ pub(super) fn nowhere(frame: &Frame, phi: &Vector, infeasible: bool) -> Fit {
         phi: phi.clone(),
         log_likelihood: frame.value(phi),
         multipliers: Vector::zeros(frame.m),
+        slope: None,
         edges: Vec::new(),
         redundant: Vec::new(),
         certificate: Certificate {

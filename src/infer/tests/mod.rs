@@ -1,6 +1,7 @@
 //! The whole of inference on likelihoods in closed form.
 
 mod edges;
+mod kinks;
 mod normal;
 mod tables;
 

@@ -2,5 +2,6 @@
 
 mod awkward;
 mod classical;
+mod kinks;
 mod likelihoods;
 mod random;
