@@ -1,7 +1,7 @@
 //! Laplace (double exponential) distribution.
 //!
-//! The density has a kink at its median. Where the location meets a response, the derivative is that of one side; the
-//! certificate counts such ties.
+//! The density has a kink at its median. Maxima sit there, with the location in a response: the search meets such rows exactly
+//! and counts the kink as stationary where the slopes of its two sides enclose zero.
 
 use super::{Amounts, Distribution, Family, Information, Link, Moments, RowParameter, Support};
 use crate::math::{Random, Range};

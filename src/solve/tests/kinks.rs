@@ -75,7 +75,7 @@ fn an_odd_number_of_rows_has_its_median() {
 
 #[test]
 fn far_from_zero_and_in_small_units_too() {
-    for (shift, unit) in [(1e6, 1.0), (-3e5, 1e-3), (0.0, 1e-6), (0.0, 1e7)] {
+    for (shift, unit) in [(1e6, 1.0), (-3e5, 1.0), (2e3, 1e-3), (0.0, 1e-6), (0.0, 1e7)] {
         let rows: Vec<f64> = [0.5, 1.0, 4.0, 2.0, 7.0, 3.25, 9.5].iter().map(|x| shift + unit * x).collect();
         let s = prepare(&laplace(), &table(vec![y(&rows)], None)).unwrap();
         let fit = fit(&s, &[]);
