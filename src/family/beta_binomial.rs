@@ -24,19 +24,27 @@ pub const BETA_BINOMIAL: Family = Family {
     ],
     amounts: &["trials"],
     // two cells and the whole, each in deviances and what Stirling's formula leaves: overdispersion 0 is no special case; a cell
-    // without count takes a form that holds where nothing is expected in it either
+    // without count takes a form that holds where nothing is expected in it either, one with far fewer than expected another
     log_density: "if(y = 0, -mean * trials * log1p_over(0, trials * overdispersion / (1 - overdispersion)), \
         -deviance(y, trials * (mean * (1 - overdispersion) + overdispersion * y) / (1 + (trials - 1) * overdispersion)) \
-        - overdispersion * (1 - overdispersion) * ((y - trials * mean) / (1 + (trials - 1) * overdispersion))^2 / mean \
-        * log1p_excess(0, overdispersion * (y - trials * mean) / (mean * (1 + (trials - 1) * overdispersion))) \
+        - if(overdispersion * (y - trials * mean) / (mean * (1 + (trials - 1) * overdispersion)) < -0.5, \
+        (1 - overdispersion) * ((y - trials * mean) / (1 + (trials - 1) * overdispersion) \
+        - (log1p(overdispersion * y / ((1 - overdispersion) * mean)) - log1p(trials * overdispersion / (1 - overdispersion))) \
+        * mean / overdispersion), \
+        overdispersion * (1 - overdispersion) * ((y - trials * mean) / (1 + (trials - 1) * overdispersion))^2 / mean \
+        * log1p_excess(0, overdispersion * (y - trials * mean) / (mean * (1 + (trials - 1) * overdispersion)))) \
         - log1p(overdispersion * y / ((1 - overdispersion) * mean)) / 2 \
         + stirling_inverse(0, overdispersion / (mean * (1 - overdispersion) + overdispersion * y)) \
         - stirling_inverse(0, overdispersion / ((1 - overdispersion) * mean))) \
         + if(y = trials, -(1 - mean) * trials * log1p_over(0, trials * overdispersion / (1 - overdispersion)), \
         -deviance(trials - y, trials * ((1 - mean) * (1 - overdispersion) + overdispersion * (trials - y)) \
         / (1 + (trials - 1) * overdispersion)) \
-        - overdispersion * (1 - overdispersion) * ((y - trials * mean) / (1 + (trials - 1) * overdispersion))^2 / (1 - mean) \
-        * log1p_excess(0, overdispersion * (trials * mean - y) / ((1 - mean) * (1 + (trials - 1) * overdispersion))) \
+        - if(overdispersion * (trials * mean - y) / ((1 - mean) * (1 + (trials - 1) * overdispersion)) < -0.5, \
+        (1 - overdispersion) * ((trials * mean - y) / (1 + (trials - 1) * overdispersion) \
+        - (log1p(overdispersion * (trials - y) / ((1 - overdispersion) * (1 - mean))) \
+        - log1p(trials * overdispersion / (1 - overdispersion))) * (1 - mean) / overdispersion), \
+        overdispersion * (1 - overdispersion) * ((y - trials * mean) / (1 + (trials - 1) * overdispersion))^2 / (1 - mean) \
+        * log1p_excess(0, overdispersion * (trials * mean - y) / ((1 - mean) * (1 + (trials - 1) * overdispersion)))) \
         - log1p(overdispersion * (trials - y) / ((1 - overdispersion) * (1 - mean))) / 2 \
         + stirling_inverse(0, overdispersion / ((1 - mean) * (1 - overdispersion) + overdispersion * (trials - y))) \
         - stirling_inverse(0, overdispersion / ((1 - overdispersion) * (1 - mean)))) \

@@ -23,11 +23,15 @@ pub const NEGATIVE_BINOMIAL: Family = Family {
         ),
     ],
     amounts: &["exposure"],
-    // what Stirling's formula leaves, and deviances: nothing cancels at large counts, and dispersion 0 is no special case
+    // what Stirling's formula leaves, and deviances: nothing cancels at large counts, and dispersion 0 is no special case; the other
+    // branch is the same where far fewer were counted than expected
     log_density: "stirling_inverse(0, dispersion / (1 + dispersion * y)) - stirling_inverse(0, dispersion) - factorial_remainder(y) \
         - deviance(y, exposure * mean * (1 + dispersion * y) / (1 + dispersion * exposure * mean)) \
-        - dispersion * ((y - exposure * mean) / (1 + dispersion * exposure * mean))^2 \
-        * log1p_excess(0, dispersion * (y - exposure * mean) / (1 + dispersion * exposure * mean)) \
+        - if(dispersion * (y - exposure * mean) / (1 + dispersion * exposure * mean) < -0.5, \
+        ((y - exposure * mean) / (1 + dispersion * exposure * mean) \
+        - (log1p(dispersion * y) - log1p(dispersion * exposure * mean)) / dispersion), \
+        dispersion * ((y - exposure * mean) / (1 + dispersion * exposure * mean))^2 \
+        * log1p_excess(0, dispersion * (y - exposure * mean) / (1 + dispersion * exposure * mean))) \
         - log1p(dispersion * y) / 2",
     distribution: Some(Distribution {
         below: "negative_binomial_log_tail(0, 0, 0, at, exposure * mean, dispersion)",

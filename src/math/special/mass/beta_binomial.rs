@@ -1,7 +1,7 @@
 //! Tails of the beta-binomial distribution.
 
-use super::super::{deviance, factorial_remainder, log1p_excess, log1p_over, stirling_inverse};
-use super::{Jet, Mass, tail};
+use super::super::{deviance, factorial_remainder, log1p_over, stirling_inverse};
+use super::{Jet, Mass, quotients, tail};
 use libm::log1p;
 
 /// The (i, j)-th derivative in (p, rho) of log P(Y <= y) (side 0) or log P(Y > y) (side 1), i + j <= 2, for a beta-binomial count
@@ -73,7 +73,7 @@ struct BetaBinomial {
 impl BetaBinomial {
     /// What a cell with count y and probability p gives to log f, but for the factorials; derivatives in its own p.
     ///
-    /// With z = (y - n p)/(1 + n theta), d = theta z/p, L of [`log1p_over`], E of [`log1p_excess`] the scores are (z/p) L(d) and
+    /// With z = (y - n p)/(1 + n theta), d = theta z/p, L and E of [`quotients`] the scores are (z/p) L(d) and
     /// (z^2/p) E(d), besides those of -log1p(theta y/p)/2 + S(theta/(p + theta y)) - S(theta/p).
     fn cell(&self, y: f64, p: f64) -> Jet {
         let (n, t, q) = (self.n, self.theta, self.spread);
@@ -81,7 +81,8 @@ impl BetaBinomial {
             // z/p is -n/(1 + n theta) also at p = 0
             let ratio = -n / q;
             let d = t * ratio;
-            let (l, e, e1) = (log1p_over(0.0, n * t), log1p_excess(0.0, d), log1p_excess(1.0, d));
+            let l = log1p_over(0.0, n * t);
+            let [_, e, e1] = quotients(d, 1.0 / q, -log1p(n * t));
             return Jet {
                 value: -p * n * l,
                 first: [-n * l, p * ratio * ratio * e],
@@ -91,8 +92,8 @@ impl BetaBinomial {
         let z = (y - n * p) / q;
         let ratio = z / p;
         let d = t * ratio;
-        let (l, e, e1) = (log1p_over(0.0, d), log1p_excess(0.0, d), log1p_excess(1.0, d));
         let g = p + t * y;
+        let [l, e, e1] = quotients(d, g / (p * q), log1p(t * y / p) - log1p(n * t));
         let s = |order: f64| (stirling_inverse(order, t / g), stirling_inverse(order, t / p));
         let ((s0, t0), (s1, t1), (s2, t2)) = (s(0.0), s(1.0), s(2.0));
         let (g2, p2) = (g * g, p * p);

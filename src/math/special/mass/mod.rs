@@ -3,7 +3,8 @@
 //! A sum starts at the count that is asked for, where the mass is known in closed form, and goes away from the mean by the ratio
 //! of neighbours; the scores follow by the derivatives of the ratio. With s the score and h its slope at a count, the derivatives
 //! of the logarithm of a sum of f are sum(f s)/sum(f) and sum(f (s s' + h))/sum(f) less the product of the first ones. All is kept
-//! in units of the first term, so that a far tail does not underflow.
+//! in units of the first term, so that a far tail does not underflow. Past some thousands of counts the mass is smooth beside their
+//! number, and quadrature goes on.
 
 mod beta_binomial;
 mod hypergeometric;
@@ -11,13 +12,14 @@ mod logarithmic;
 mod negative_binomial;
 #[cfg(test)]
 mod reference;
+mod run;
 
 pub use beta_binomial::beta_binomial_log_tail;
 pub use hypergeometric::{hypergeometric_log_mass, hypergeometric_log_sum, hypergeometric_log_tail};
 pub use logarithmic::logarithmic_log_tail;
 pub use negative_binomial::negative_binomial_log_tail;
 
-use super::log1mexp;
+use super::{log1mexp, log1p_excess, log1p_over};
 
 /// A logarithm and its first and second derivatives in two parameters.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -76,6 +78,16 @@ impl Jet {
     }
 }
 
+/// log1p(d)/d, (d - log1p(d))/d^2 and the derivative of the latter, from d, 1 + d and log(1 + d): near -1, where few are counted
+/// of many expected, d alone says too little of 1 + d.
+fn quotients(d: f64, up: f64, log: f64) -> [f64; 3] {
+    if d > -0.5 {
+        return [log1p_over(0.0, d), log1p_excess(0.0, d), log1p_excess(1.0, d)];
+    }
+    let e = (d - log) / (d * d);
+    [log / d, e, (1.0 / up - 2.0 * e) / d]
+}
+
 /// A mass on the whole numbers from 0, in two parameters.
 trait Mass {
     /// The largest count, or infinity.
@@ -102,43 +114,84 @@ fn sum(mass: &impl Mass, from: f64, upward: bool) -> Jet {
     if !start.value.is_finite() {
         return start;
     }
-    let limit = mass.limit(upward);
-    let (mut u, mut term) = (from, 1.0);
-    // scores less the first one, so that large ones do not cancel
-    let (mut s, mut h) = ([0.0; 2], start.second);
-    let (mut total, mut first, mut second) = (0.0, [0.0; 2], [0.0; 3]);
-    loop {
-        total += term;
-        for i in 0..2 {
-            first[i] += term * s[i];
+    let end = if upward { mass.last() } else { 0.0 };
+    let steps = (end - from).abs();
+    let long = steps > 3.0 * run::SINGLE;
+    let mut sums = Sums::about(start);
+    let singly = if long { run::SINGLE - 1.0 } else { steps };
+    if !sums.walk(mass, &start, from, singly, upward, mass.limit(upward)) && long {
+        run::rest(mass, from, end, upward, &mut sums);
+    }
+    sums.log()
+}
+
+/// Sums of f, f s and f (s s' + h) in units of one mass, the scores less those there, so that large ones do not cancel.
+struct Sums {
+    unit: Jet,
+    total: f64,
+    first: [f64; 2],
+    second: [f64; 3],
+}
+
+impl Sums {
+    fn about(unit: Jet) -> Sums {
+        Sums { unit, total: 0.0, first: [0.0; 2], second: [0.0; 3] }
+    }
+
+    fn add(&mut self, term: f64, s: [f64; 2], h: [f64; 3]) {
+        self.total += term;
+        for (sum, s) in self.first.iter_mut().zip(s) {
+            *sum += term * s;
         }
+        for ((sum, (i, j)), h) in self.second.iter_mut().zip(PAIRS).zip(h) {
+            *sum += term * (s[i] * s[j] + h);
+        }
+    }
+
+    /// Adds a mass in closed form, times a weight.
+    fn add_jet(&mut self, weight: f64, jet: &Jet) {
+        let s = [0, 1].map(|i| jet.first[i] - self.unit.first[i]);
+        self.add(weight * libm::exp(jet.value - self.unit.value), s, jet.second);
+    }
+
+    /// Adds a mass and those of so many further counts one by one. Whether the rest is negligible, going by a bound on all later
+    /// ratios beside the present one.
+    fn walk(&mut self, mass: &impl Mass, start: &Jet, from: f64, steps: f64, upward: bool, limit: f64) -> bool {
+        let (mut u, mut left) = (from, steps);
+        let mut term = libm::exp(start.value - self.unit.value);
+        let mut s = [0, 1].map(|i| start.first[i] - self.unit.first[i]);
+        let mut h = start.second;
+        loop {
+            self.add(term, s, h);
+            if left == 0.0 {
+                return false;
+            }
+            let (rise, sign) = if upward { (mass.rise(u), 1.0) } else { (mass.rise(u - 1.0), -1.0) };
+            let ratio = if upward { rise.value } else { 1.0 / rise.value };
+            let bound = ratio.max(limit);
+            term *= ratio;
+            if (bound < 1.0 && term <= REST * self.total * (1.0 - bound)) || term == 0.0 || term.is_nan() {
+                return true;
+            }
+            u += sign;
+            left -= 1.0;
+            s = [0, 1].map(|i| s[i] + sign * rise.first[i]);
+            h = [0, 1, 2].map(|k| h[k] + sign * rise.second[k]);
+        }
+    }
+
+    fn log(&self) -> Jet {
+        let first = self.first.map(|x| x / self.total);
+        let mut out = Jet {
+            value: self.unit.value + libm::log(self.total),
+            first: [0, 1].map(|i| self.unit.first[i] + first[i]),
+            second: [0.0; 3],
+        };
         for (k, &(i, j)) in PAIRS.iter().enumerate() {
-            second[k] += term * (s[i] * s[j] + h[k]);
+            out.second[k] = self.second[k] / self.total - first[i] * first[j];
         }
-        if u == (if upward { mass.last() } else { 0.0 }) {
-            break;
-        }
-        let (rise, sign) = if upward { (mass.rise(u), 1.0) } else { (mass.rise(u - 1.0), -1.0) };
-        let ratio = if upward { rise.value } else { 1.0 / rise.value };
-        let bound = ratio.max(limit);
-        term *= ratio;
-        if (bound < 1.0 && term <= REST * total * (1.0 - bound)) || term == 0.0 || term.is_nan() {
-            break;
-        }
-        u += sign;
-        s = [0, 1].map(|i| s[i] + sign * rise.first[i]);
-        h = [0, 1, 2].map(|k| h[k] + sign * rise.second[k]);
+        out
     }
-    let first = first.map(|x| x / total);
-    let mut out = Jet {
-        value: start.value + libm::log(total),
-        first: [0, 1].map(|i| start.first[i] + first[i]),
-        second: [0.0; 3],
-    };
-    for (k, &(i, j)) in PAIRS.iter().enumerate() {
-        out.second[k] = second[k] / total - first[i] * first[j];
-    }
-    out
 }
 
 /// log P(Y <= y), or log P(Y > y) where `above`, at a whole number y. The side away from the mean is summed, unless it holds more

@@ -1,7 +1,7 @@
 //! Tails of the negative binomial distribution.
 
-use super::super::{deviance, factorial_remainder, log1p_excess, stirling_inverse};
-use super::{Jet, Mass, tail};
+use super::super::{deviance, factorial_remainder, stirling_inverse};
+use super::{Jet, Mass, quotients, tail};
 use libm::log1p;
 
 /// The (i, j)-th derivative in (mean, k) of log P(Y <= y) (side 0) or log P(Y > y) (side 1), i + j <= 2, for a negative binomial
@@ -49,25 +49,26 @@ impl Mass for NegativeBinomial {
         self.mean
     }
 
-    /// With z = (u - m)/(1 + k m) and S of [`stirling_inverse`], E of [`log1p_excess`]: the score in m is z/m, that in k is
+    /// With z = (u - m)/(1 + k m), S of [`stirling_inverse`] and E of [`quotients`] the score in m is z/m, that in k is
     /// z^2 E(k z) - u/(2 (1 + k u)) + S'(k/(1 + k u))/(1 + k u)^2 - S'(k).
     fn at(&self, u: f64) -> Jet {
         let (m, k, q) = (self.mean, self.k, self.spread);
         let z = (u - m) / q;
         let up = 1.0 + k * u;
-        let (c, e) = (k / up, [log1p_excess(0.0, k * z), log1p_excess(1.0, k * z)]);
+        let c = k / up;
+        let [_, e, e1] = quotients(k * z, up / q, log1p(k * u) - log1p(k * m));
         let s = |order: f64| (stirling_inverse(order, c), stirling_inverse(order, k));
         let ((s0, t0), (s1, t1), (s2, t2)) = (s(0.0), s(1.0), s(2.0));
-        let value = s0 - t0 - factorial_remainder(u) - deviance(u, m * up / q) - k * z * z * e[0] - 0.5 * log1p(k * u);
+        let value = s0 - t0 - factorial_remainder(u) - deviance(u, m * up / q) - k * z * z * e - 0.5 * log1p(k * u);
         let half = 0.5 * u / up;
         let square = up * up;
         Jet {
             value,
-            first: [z / m, z * z * e[0] - half + s1 / square - t1],
+            first: [z / m, z * z * e - half + s1 / square - t1],
             second: [
-                k * up / (q * q) - u / (m * m),
+                (k * m * (m - 2.0 * u) - u) / (m * q * m * q),
                 -z / q,
-                z * z / q * (z * e[1] - 2.0 * m * e[0]) + 2.0 * half * half + s2 / (square * square)
+                z * z / q * (z * e1 - 2.0 * m * e) + 2.0 * half * half + s2 / (square * square)
                     - 2.0 * u * s1 / (square * up)
                     - t2,
             ],
