@@ -197,7 +197,9 @@ impl Graph {
             | Function::HypergeometricLogTail
             | Function::NegativeBinomialLogTail
             | Function::BetaBinomialLogTail
-            | Function::LogarithmicLogTail => self.constant(f64::NAN),
+            | Function::LogarithmicLogTail
+            | Function::NegativeBinomialInformation
+            | Function::BetaBinomialInformation => self.constant(f64::NAN),
             Function::Deviance if at == 0 => {
                 let (above, below) = (self.call(Function::Log, &[x]), self.call(Function::Log, &[arguments[1]]));
                 self.subtract(above, below)

@@ -76,6 +76,10 @@ pub enum Function {
     HypergeometricLogMass,
     /// `hypergeometric_log_tail(side, order, y, w, s, f, n)`, of log P(Y <= y) (side 0) or log P(Y > y) (side 1)
     HypergeometricLogTail,
+    /// `negative_binomial_information(mean, k)`: expected information about k
+    NegativeBinomialInformation,
+    /// `beta_binomial_information(i, j, n, p, rho)`: expected information between p (0) and rho (1)
+    BetaBinomialInformation,
     /// `negative_binomial_log_tail(side, i, j, y, mean, k)`
     NegativeBinomialLogTail,
     /// `beta_binomial_log_tail(side, i, j, y, n, p, rho)`
@@ -210,6 +214,20 @@ pub const TABLE: &[Entry] = &[
         7,
         7,
         "the same of log P(Y <= y) (side 0) or log P(Y > y) (side 1), (side, order, y, w, successes, failures, draws)",
+    ),
+    Entry(
+        Function::NegativeBinomialInformation,
+        "negative_binomial_information",
+        2,
+        2,
+        "expected information of a negative binomial count about its dispersion, (mean, dispersion)",
+    ),
+    Entry(
+        Function::BetaBinomialInformation,
+        "beta_binomial_information",
+        5,
+        5,
+        "expected information of a beta-binomial count, (i, j, trials, mean, overdispersion), 0 for the mean and 1 for the overdispersion",
     ),
     Entry(
         Function::NegativeBinomialLogTail,

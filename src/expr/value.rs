@@ -57,6 +57,8 @@ impl Function {
             Function::HypergeometricLogSum => special::hypergeometric_log_sum(a, x[1], x[2], x[3], x[4]),
             Function::HypergeometricLogMass => special::hypergeometric_log_mass(a, x[1], x[2], x[3], x[4], x[5]),
             Function::HypergeometricLogTail => special::hypergeometric_log_tail(a, x[1], x[2], x[3], x[4], x[5], x[6]),
+            Function::NegativeBinomialInformation => special::negative_binomial_information(a, x[1]),
+            Function::BetaBinomialInformation => special::beta_binomial_information(a, x[1], x[2], x[3], x[4]),
             Function::NegativeBinomialLogTail => special::negative_binomial_log_tail(a, x[1], x[2], x[3], x[4], x[5]),
             Function::BetaBinomialLogTail => special::beta_binomial_log_tail(a, x[1], x[2], x[3], x[4], x[5], x[6]),
             Function::LogarithmicLogTail => special::logarithmic_log_tail(a, x[1], x[2], x[3]),

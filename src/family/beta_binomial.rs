@@ -57,7 +57,11 @@ pub const BETA_BINOMIAL: Family = Family {
         above: "beta_binomial_log_tail(1, 0, 0, at, trials, mean, overdispersion)",
         between: None,
     }),
-    information: Information::Computed,
+    information: Information::Closed(&[
+        ("mean", "mean", "beta_binomial_information(0, 0, trials, mean, overdispersion)"),
+        ("mean", "overdispersion", "beta_binomial_information(0, 1, trials, mean, overdispersion)"),
+        ("overdispersion", "overdispersion", "beta_binomial_information(1, 1, trials, mean, overdispersion)"),
+    ]),
     information_note: "exact sum over the counts",
     source: "Skellam (1948), Journal of the Royal Statistical Society B 10; in deviances after Loader (2000), Fast and accurate \
         computation of binomial probabilities",

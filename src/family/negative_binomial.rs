@@ -38,7 +38,10 @@ pub const NEGATIVE_BINOMIAL: Family = Family {
         above: "negative_binomial_log_tail(1, 0, 0, at, exposure * mean, dispersion)",
         between: None,
     }),
-    information: Information::Computed,
+    information: Information::Closed(&[
+        ("mean", "mean", "exposure / (mean * (1 + dispersion * exposure * mean))"),
+        ("dispersion", "dispersion", "negative_binomial_information(exposure * mean, dispersion)"),
+    ]),
     information_note: "exact sum over the counts",
     source: "Johnson, Kemp and Kotz, Univariate Discrete Distributions, ch. 5; in deviances after Loader (2000), Fast and accurate \
         computation of binomial probabilities",

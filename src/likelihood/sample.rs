@@ -84,7 +84,7 @@ impl Component {
 }
 
 /// Rows that starts are tried on; a likelihood is thinned when it has several times as many.
-const THIN_ROWS: usize = 16_384;
+const THIN_ROWS: usize = 4_096;
 /// Rows whose total mass is looked at.
 const MASS_ROWS: usize = 100;
 /// Fewest rows that a part may keep.

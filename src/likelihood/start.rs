@@ -112,6 +112,11 @@ fn density(shape: &Shape, f: &Family, level: usize, members: &[usize], phi: &mut
     let mut store = Vec::new();
     let size = size(shape, None, &mut store);
     let mut moments = shape.rows.moments(members.iter().copied(), size);
+    if f.amounts.contains(&"trials")
+        && let Some(size) = size
+    {
+        moments.trials = members.iter().map(|&i| size[i]).sum::<f64>() / members.len().max(1) as f64;
+    }
     let known: Vec<Option<f64>> = (0..f.parameters.len())
         .map(|row| {
             let at = shape.locals.iter().position(|l| l.row == Some(row))?;

@@ -25,8 +25,8 @@ pub use incomplete_gamma::{gamma_log_cdf, gamma_log_survival};
 pub use interval::normal_log_interval;
 pub use logistic::{log_logistic, log_mix, log_sum_exp, log1mexp, logistic, logit};
 pub use mass::{
-    beta_binomial_log_tail, hypergeometric_log_mass, hypergeometric_log_sum, hypergeometric_log_tail,
-    logarithmic_log_tail, negative_binomial_log_tail,
+    beta_binomial_information, beta_binomial_log_tail, hypergeometric_log_mass, hypergeometric_log_sum,
+    hypergeometric_log_tail, logarithmic_log_tail, negative_binomial_information, negative_binomial_log_tail,
 };
 pub(super) use normal::erfc_scaled_argument;
 pub use normal::{

@@ -1,7 +1,7 @@
 //! Tails of the beta-binomial distribution.
 
 use super::super::{deviance, factorial_remainder, log1p_over, stirling_inverse};
-use super::{Jet, Mass, quotients, tail};
+use super::{Jet, Mass, information, quotients, tail};
 use libm::log1p;
 
 /// The (i, j)-th derivative in (p, rho) of log P(Y <= y) (side 0) or log P(Y > y) (side 1), i + j <= 2, for a beta-binomial count
@@ -29,6 +29,25 @@ pub fn beta_binomial_log_tail(side: f64, i: f64, j: f64, y: f64, n: f64, p: f64,
         tail(&BetaBinomial { n, p, q: 1.0 - p, theta, spread: 1.0 + n * theta }, above, y)
     };
     out.through(1.0 / (rest * rest), 2.0 / (rest * rest * rest)).derivative(i, j)
+}
+
+/// Expected information of a beta-binomial count, E[s_i s_j] with s the scores in p (0) and rho (1), by exact summation; NaN
+/// outside the domain and at p of 0 or 1, where it is infinite.
+pub fn beta_binomial_information(i: f64, j: f64, n: f64, p: f64, rho: f64) -> f64 {
+    let whole = n == n.floor() && n >= 0.0 && n.is_finite();
+    if !(whole && p > 0.0 && p < 1.0 && (0.0..1.0).contains(&rho)) {
+        return if p == 0.0 || p == 1.0 { f64::INFINITY } else { f64::NAN };
+    }
+    let rest = 1.0 - rho;
+    let theta = rho / rest;
+    let found = information(&BetaBinomial { n, p, q: 1.0 - p, theta, spread: 1.0 + n * theta });
+    // by rho instead of theta
+    let slope = 1.0 / (rest * rest);
+    match (i, j) {
+        (0.0, 0.0) => found[0],
+        (1.0, 1.0) => found[2] * slope * slope,
+        _ => found[1] * slope,
+    }
 }
 
 /// All the mass is at 0, and the derivatives are one-sided: P(Y <= y) = f(0) (1 + p A), A a sum of products that go on.

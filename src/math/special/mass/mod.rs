@@ -14,10 +14,10 @@ mod negative_binomial;
 mod reference;
 mod run;
 
-pub use beta_binomial::beta_binomial_log_tail;
+pub use beta_binomial::{beta_binomial_information, beta_binomial_log_tail};
 pub use hypergeometric::{hypergeometric_log_mass, hypergeometric_log_sum, hypergeometric_log_tail};
 pub use logarithmic::logarithmic_log_tail;
-pub use negative_binomial::negative_binomial_log_tail;
+pub use negative_binomial::{negative_binomial_information, negative_binomial_log_tail};
 
 use super::{log1mexp, log1p_excess, log1p_over};
 
@@ -114,14 +114,8 @@ fn sum(mass: &impl Mass, from: f64, upward: bool) -> Jet {
     if !start.value.is_finite() {
         return start;
     }
-    let end = if upward { mass.last() } else { 0.0 };
-    let steps = (end - from).abs();
-    let long = steps > 3.0 * run::SINGLE;
     let mut sums = Sums::about(start);
-    let singly = if long { run::SINGLE - 1.0 } else { steps };
-    if !sums.walk(mass, &start, from, singly, upward, mass.limit(upward)) && long {
-        run::rest(mass, from, end, upward, &mut sums);
-    }
+    sums.side(mass, &start, from, upward);
     sums.log()
 }
 
@@ -145,6 +139,17 @@ impl Sums {
         }
         for ((sum, (i, j)), h) in self.second.iter_mut().zip(PAIRS).zip(h) {
             *sum += term * (s[i] * s[j] + h);
+        }
+    }
+
+    /// Adds all from a count on, whose mass is `start`, upward to the last or downward to 0.
+    fn side(&mut self, mass: &impl Mass, start: &Jet, from: f64, upward: bool) {
+        let end = if upward { mass.last() } else { 0.0 };
+        let steps = (end - from).abs();
+        let long = steps > 3.0 * run::SINGLE;
+        let singly = if long { run::SINGLE - 1.0 } else { steps };
+        if !self.walk(mass, start, from, singly, upward, mass.limit(upward)) && long {
+            run::rest(mass, from, end, upward, self);
         }
     }
 
@@ -192,6 +197,50 @@ impl Sums {
         }
         out
     }
+}
+
+/// A mass of which only the scores are looked at, so that [`Sums`] gathers f s s'.
+struct Scores<'a, M>(&'a M);
+
+impl<M: Mass> Mass for Scores<'_, M> {
+    fn last(&self) -> f64 {
+        self.0.last()
+    }
+
+    fn mean(&self) -> f64 {
+        self.0.mean()
+    }
+
+    fn at(&self, u: f64) -> Jet {
+        Jet { second: [0.0; 3], ..self.0.at(u) }
+    }
+
+    fn rise(&self, u: f64) -> Jet {
+        Jet { second: [0.0; 3], ..self.0.rise(u) }
+    }
+
+    fn limit(&self, upward: bool) -> f64 {
+        self.0.limit(upward)
+    }
+}
+
+/// E[s_i s_j] of the scores by the two parameters, summed over all counts outward from the mean.
+fn information(mass: &impl Mass) -> [f64; 3] {
+    let mass = Scores(mass);
+    let from = mass.mean().floor().clamp(0.0, mass.last());
+    let unit = mass.at(from);
+    let mut sums = Sums::about(unit);
+    sums.side(&mass, &unit, from, true);
+    if from > 0.0 {
+        sums.side(&mass, &mass.at(from - 1.0), from - 1.0, false);
+    }
+    // the scores were taken less those of the unit, and their mean is zero
+    let u = unit.first;
+    let mut out = [0.0; 3];
+    for (k, &(i, j)) in PAIRS.iter().enumerate() {
+        out[k] = sums.second[k] / sums.total - u[i] * u[j];
+    }
+    out
 }
 
 /// log P(Y <= y), or log P(Y > y) where `above`, at a whole number y. The side away from the mean is summed, unless it holds more

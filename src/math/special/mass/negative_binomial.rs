@@ -1,7 +1,7 @@
 //! Tails of the negative binomial distribution.
 
 use super::super::{deviance, factorial_remainder, stirling_inverse};
-use super::{Jet, Mass, quotients, tail};
+use super::{Jet, Mass, information, quotients, tail};
 use libm::log1p;
 
 /// The (i, j)-th derivative in (mean, k) of log P(Y <= y) (side 0) or log P(Y > y) (side 1), i + j <= 2, for a negative binomial
@@ -17,6 +17,18 @@ pub fn negative_binomial_log_tail(side: f64, i: f64, j: f64, y: f64, mean: f64, 
     let mass = NegativeBinomial { mean, k, spread: 1.0 + k * mean };
     let out = if mean == 0.0 && y >= 0.0 { no_mean(above, y, k) } else { tail(&mass, above, y) };
     out.derivative(i, j)
+}
+
+/// Expected information of a negative binomial count about k, E[s^2] with s the score in k, by exact summation; NaN outside the
+/// domain. (That about the mean is 1 / (mean + k mean^2), and nothing is shared.)
+pub fn negative_binomial_information(mean: f64, k: f64) -> f64 {
+    if !(mean >= 0.0 && k >= 0.0 && mean.is_finite() && k.is_finite()) {
+        return f64::NAN;
+    }
+    if mean == 0.0 {
+        return 0.0;
+    }
+    information(&NegativeBinomial { mean, k, spread: 1.0 + k * mean })[2]
 }
 
 /// All the mass is at 0, and the derivatives are one-sided: f(1) begins with the mean, f(2) with (1 + k)/2 of its square.
