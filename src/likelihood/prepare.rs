@@ -40,15 +40,17 @@ pub(super) struct Plan<'m> {
 }
 
 impl<'m> Plan<'m> {
+    /// `apart`: equal rows are not joined.
+    ///
     /// # Errors
     /// A statement that does not fit its family or the table; values that the response cannot take.
-    pub(super) fn new(model: &'m Model, table: &'m Table) -> Result<Plan<'m>, LikelihoodError> {
+    pub(super) fn new(model: &'m Model, table: &'m Table, apart: bool) -> Result<Plan<'m>, LikelihoodError> {
         let layout = match Composite::named(&model.family) {
             Some(family) => Some(labels::layout(model, family, table)?),
             None => None,
         };
         let statement = Statement::resolve(model, layout)?;
-        let mut rows = rows::read(model, &statement, table)?;
+        let mut rows = rows::read(model, &statement, table, apart)?;
         let locals = locals(model, &statement, &rows, table)?;
         let predictors = predictors(&statement, table)?;
         let levels = rows.levels.len().max(1);
@@ -169,7 +171,7 @@ fn threshold(
 /// # Errors
 /// A statement that does not fit its family or the table; values that the response cannot take.
 pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> {
-    let plan = Plan::new(model, table)?;
+    let plan = Plan::new(model, table, false)?;
     let template = plan.template();
     let Plan { statement, rows, locals, predictors, bound_locals, bound_coefficients, designs, .. } = &plan;
     let levels = rows.levels.len().max(1);

@@ -1,5 +1,7 @@
 //! The rows a likelihood is computed from: the table's, or for labels one row a cell with its count; each of one kind.
 
+use std::collections::{HashMap, HashSet};
+
 use super::LikelihoodError;
 use super::compose::has_terms;
 use super::model::{Amount, Model, Response};
@@ -74,6 +76,36 @@ impl Rows {
         self.weights.as_ref().map_or(self.count as f64, |w| w.iter().sum())
     }
 
+    /// What tells a row from others.
+    fn key(&self, row: usize) -> (u32, RowKind, Vec<u64>) {
+        (self.level[row], self.kinds[row], self.columns.iter().map(|c| c.1[row].to_bits()).collect())
+    }
+
+    /// Whether among the first rows most have been there before.
+    fn pays_to_join(&self) -> bool {
+        let look = self.count.min(LOOK);
+        let seen: HashSet<_> = (0..look).map(|i| self.key(i)).collect();
+        look > 0 && 2 * seen.len() <= look
+    }
+
+    /// Joins equal rows into one with their total weight, in an order that does not depend on theirs.
+    fn join(&mut self) {
+        let mut totals: HashMap<(u32, RowKind, Vec<u64>), (usize, f64)> = HashMap::new();
+        for row in 0..self.count {
+            totals.entry(self.key(row)).or_insert((row, 0.0)).1 += self.weight(row);
+        }
+        let mut found: Vec<_> = totals.into_iter().collect();
+        found.sort_by(|a, b| a.0.cmp(&b.0));
+        let rows: Vec<usize> = found.iter().map(|f| f.1.0).collect();
+        self.count = rows.len();
+        self.kinds = rows.iter().map(|&i| self.kinds[i]).collect();
+        self.level = rows.iter().map(|&i| self.level[i]).collect();
+        self.weights = Some(found.iter().map(|f| f.1.1).collect());
+        for (_, values) in &mut self.columns {
+            *values = rows.iter().map(|&i| values[i]).collect();
+        }
+    }
+
     /// Takes what lies at or below `low` out of the interval of a row; the upper end if nothing is left.
     pub(super) fn bound_below(&mut self, row: usize, low: f64) -> Result<(), f64> {
         let at = |rows: &Rows, key: &str| rows.columns.iter().position(|c| c.0 == key);
@@ -145,12 +177,20 @@ pub(super) fn fault(table: &Table, row: usize, column: &str, found: f64, wanted:
     ))
 }
 
-/// Reads the rows of a table as the model sees them.
+/// Rows that a look at decides whether equal ones are worth joining.
+const LOOK: usize = 2_000;
+
+/// Reads the rows of a table as the model sees them. Counts without anything that differs between rows come up again and again:
+/// equal rows are then joined into one with their total weight, unless each has to stay by itself (`apart`).
 ///
 /// # Errors
 /// Missing columns; values that the response cannot take.
-pub(super) fn read(model: &Model, statement: &Statement, table: &Table) -> Result<Rows, LikelihoodError> {
+pub(super) fn read(model: &Model, statement: &Statement, table: &Table, apart: bool) -> Result<Rows, LikelihoodError> {
     let mut rows = columns(model, statement, table)?;
+    let plain = |r: &super::statement::RowEntry| r.curve.is_none() && !has_terms(r.setting.map(|s| &s.form));
+    if !apart && statement.counts() && statement.rows.iter().all(plain) && rows.pays_to_join() {
+        rows.join();
+    }
     rows.members = vec![Vec::new(); rows.levels.len().max(1)];
     for (i, &level) in rows.level.iter().enumerate() {
         rows.members[level as usize].push(i);

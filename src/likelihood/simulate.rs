@@ -44,7 +44,7 @@ pub fn simulate(
     theta: &Vector,
     seed: u64,
 ) -> Result<Vec<Column>, LikelihoodError> {
-    let plan = Plan::new(model, table)?;
+    let plan = Plan::new(model, table, true)?;
     let refuse = |why: &str, advice: &str| Err(LikelihoodError::statement("model", why, advice));
     if matches!(model.response, Response::Ends { .. }) || model.event.is_some() {
         return refuse(
