@@ -61,6 +61,8 @@ pub enum Support {
     Angle,
     /// Numbers at or above the known row parameter of this name.
     From(&'static str),
+    /// The value of the known row parameter of this name, on which all mass lies.
+    Lump(&'static str),
     /// Whole numbers >= 0.
     Count,
     /// Whole numbers >= 1.
@@ -75,6 +77,11 @@ impl Support {
     /// Whether the response counts, so that both ends of an interval belong to it.
     pub fn is_count(self) -> bool {
         matches!(self, Support::Count | Support::CountFromOne | Support::CountOfTrials | Support::Draws)
+    }
+
+    /// Whether all mass lies on one value, beside which a density has none there.
+    pub fn is_lump(self) -> bool {
+        matches!(self, Support::Lump(_))
     }
 }
 

@@ -7,7 +7,7 @@ use crate::math::{Random, Range};
 pub const POINT: Family = Family {
     name: "point",
     response: "one value (useful as a component of a mixture: zero inflation)",
-    support: Support::Real,
+    support: Support::Lump("at"),
     parameters: &[RowParameter { given: Given::Known, ..RowParameter::new("at", Range::ALL, &[], "the value") }],
     amounts: &[],
     log_density: "if(y = at, 0, log(0))",

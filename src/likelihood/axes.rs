@@ -7,7 +7,6 @@ use super::model::Values;
 use super::rows::{FROM, UPTO, Y, table_key};
 use super::statement::Body;
 use crate::family::Support;
-use crate::family::point::POINT;
 
 /// One variable of the response: its raw column, and the values that it takes.
 #[derive(Debug, Clone)]
@@ -32,7 +31,7 @@ impl Template<'_> {
             Body::Density(_) | Body::Mixture(_) => {
                 let supports = self.statement.supports();
                 // a lump of mass among densities has no place in an integral
-                let lump = self.model.components.iter().any(|c| c.family == POINT.name);
+                let lump = supports.iter().any(|s| s.is_lump());
                 if lump && !self.statement.counts() {
                     return Ok(None);
                 }
@@ -78,7 +77,7 @@ impl Expectation {
                 Support::Real => (f64::NEG_INFINITY, f64::INFINITY),
                 Support::Angle => (-std::f64::consts::PI, std::f64::consts::PI),
                 Support::Nonnegative | Support::Positive => (0.0, f64::INFINITY),
-                Support::Unit => (0.0, 1.0),
+                Support::Unit | Support::Lump(_) => (0.0, 1.0),
                 Support::From(_) => (self.threshold.map_or(0.0, |q| row[q]), f64::INFINITY),
                 Support::Count => (0.0, f64::INFINITY),
                 Support::CountFromOne => (1.0, f64::INFINITY),
@@ -90,7 +89,7 @@ impl Expectation {
             }
         };
         let counts = supports.iter().any(|s| s.is_count());
-        let ends = supports.iter().filter(|s| !counts || s.is_count()).map(one);
+        let ends = supports.iter().filter(|s| !s.is_lump() && (!counts || s.is_count())).map(one);
         let (low, high) = ends.reduce(|a, b| (a.0.min(b.0), a.1.max(b.1))).unwrap_or((0.0, 0.0));
         if counts {
             Values::Whole(low.max(from + 1.0), high.min(upto))

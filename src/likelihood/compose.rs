@@ -11,7 +11,6 @@ use super::statement::{Body, Statement};
 use crate::data::{Table, Values};
 use crate::expr::{Graph, Id, Name, Relation, Scope, Sign, Variable, build, parse_expression};
 use crate::family::composite::Made;
-use crate::family::point::POINT;
 use crate::family::{Distribution, Family, Information, Link};
 use crate::math::Range;
 
@@ -261,7 +260,7 @@ impl Template<'_> {
         };
         // Where all mass stands at one value, a density beside it has none there.
         let mut atoms = Vec::new();
-        for (k, (_, f)) in parts.iter().enumerate().filter(|(_, (_, f))| f.name == POINT.name) {
+        for (k, (_, f)) in parts.iter().enumerate().filter(|(_, (_, f))| f.support.is_lump()) {
             let s = self.family_scope(graph, f, Some(k), rows);
             atoms.extend(s.node(f.parameters[0].name));
         }
@@ -269,7 +268,7 @@ impl Template<'_> {
         for (k, (name, f)) in parts.iter().enumerate() {
             let s = self.family_scope(graph, f, Some(k), rows);
             let mut log = log_probability(graph, f, kind, ends, &s)?;
-            if kind == RowKind::Exact && !f.support.is_count() && f.name != POINT.name {
+            if kind == RowKind::Exact && !f.support.is_count() && !f.support.is_lump() {
                 for &atom in &atoms {
                     let y = self.end(graph, Y);
                     let there = graph.compare(Relation::Equal, y, atom);

@@ -139,10 +139,10 @@ pub(super) fn number_coefficients(
                 Some(own) => own.then(&c.key).to_string(),
                 None => c.key.to_string(),
             };
-            // where the predictor itself is the log odds of a label, its meaning says more than its name
-            let what = match row.about.meaning.starts_with("log odds") {
-                true => row.about.meaning.clone(),
-                false => row.name.to_string(),
+            // what a label or a column stands for says more than its name
+            let what = match &row.key {
+                Some(_) => row.about.meaning.clone(),
+                None => row.name.to_string(),
             };
             let meaning = design::meaning(&what, p.local.link, &p.terms, table, c);
             bound.push(numbering.enter(

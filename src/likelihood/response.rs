@@ -18,7 +18,7 @@ fn allowed(support: Support) -> (fn(f64) -> bool, &'static str) {
         Support::Count | Support::CountOfTrials | Support::Draws => {
             (|y| y >= 0.0 && y.fract() == 0.0, "a whole number, 0 or more")
         }
-        Support::Real | Support::Angle | Support::From(_) => (f64::is_finite, "a finite number"),
+        Support::Real | Support::Angle | Support::From(_) | Support::Lump(_) => (f64::is_finite, "a finite number"),
     }
 }
 
@@ -29,6 +29,15 @@ fn amount(rows: &Rows, key: &str, stated: &Option<Amount>, row: usize) -> f64 {
         (None, Some(Amount::Number(n))) => *n,
         _ => 1.0,
     }
+}
+
+/// The values on which components have all their mass.
+fn lumps(model: &Model, supports: &[Support]) -> Vec<f64> {
+    let of = |(c, s): (&super::model::Component, &Support)| match s {
+        Support::Lump(name) => c.parameters.iter().find(|p| p.name == *name).and_then(|p| p.known.first()).map(|k| k.1),
+        _ => None,
+    };
+    model.components.iter().zip(supports).filter_map(of).collect()
 }
 
 /// Checks exactly seen values; `only` restricts the look to some rows.
@@ -46,9 +55,12 @@ pub(super) fn check(
 ) -> Result<(), LikelihoodError> {
     let supports = statement.supports();
     // of a mixture one component at least must be able to give the value
-    let able: Vec<_> = supports.iter().map(|&s| allowed(s)).collect();
+    let able: Vec<_> = supports.iter().filter(|s| !s.is_lump()).map(|&s| allowed(s)).collect();
+    let lumps: Vec<f64> = lumps(model, &supports);
     let looked = |i: &usize| only.is_none_or(|f| f(*i));
-    if let Some(row) = (0..y.len()).filter(looked).find(|&i| !able.iter().any(|(ok, _)| ok(y[i]))) {
+    if let Some(row) =
+        (0..y.len()).filter(looked).find(|&i| !lumps.contains(&y[i]) && !able.iter().any(|(ok, _)| ok(y[i])))
+    {
         return Err(fault(table, row, name, y[row], able.first().map_or("a number", |a| a.1)));
     }
     let of_trials = supports.iter().all(|s| matches!(s, Support::CountOfTrials)) && model.components.is_empty();

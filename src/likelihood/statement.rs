@@ -5,7 +5,6 @@ use super::compose::has_terms;
 use super::model::{Form, Model, Setting};
 use crate::expr::{Ast, Name, nearest, parse_expression};
 use crate::family::composite::{Group, Layout, Made};
-use crate::family::point::POINT;
 use crate::family::{COMPOSITES, Composite, FAMILIES, Family, Given, Link, RowParameter, Support};
 use crate::math::Range;
 
@@ -213,9 +212,9 @@ fn body(model: &Model, layout: Option<Layout>) -> Result<Body, LikelihoodError> 
             Ok(Body::Mixture(parts))
         }
         name => match Family::named(name) {
-            Some(f) if f.name == POINT.name => Err(LikelihoodError::statement(
+            Some(f) if f.support.is_lump() => Err(LikelihoodError::statement(
                 "model.family",
-                "point has nothing to estimate by itself",
+                format!("{name} has nothing to estimate by itself"),
                 "use it as the family of a component of a mixture, for values that come up too often",
             )),
             Some(f) => Ok(Body::Density(f)),

@@ -16,7 +16,7 @@ use crate::family::composite::Reads;
 pub fn wanted(model: &Model) -> Result<(Vec<Wanted>, Vec<Pair>), LikelihoodError> {
     let statement = Statement::resolve(model, None)?;
     // a mixture takes what one of its components takes
-    let of_support = statement.supports().into_iter().map(sort).reduce(|a, b| match (a, b) {
+    let of_support = statement.supports().into_iter().filter(|s| !s.is_lump()).map(sort).reduce(|a, b| match (a, b) {
         (a, b) if a == b => a,
         (Sort::Number, _) | (_, Sort::Number) => Sort::Number,
         _ => Sort::Nonnegative,
@@ -106,6 +106,6 @@ fn sort(support: Support) -> Sort {
         Support::Nonnegative => Sort::Nonnegative,
         Support::Positive => Sort::Positive,
         Support::Count | Support::CountFromOne | Support::CountOfTrials | Support::Draws => Sort::Count,
-        Support::Real | Support::Angle | Support::Unit | Support::From(_) => Sort::Number,
+        Support::Real | Support::Angle | Support::Unit | Support::From(_) | Support::Lump(_) => Sort::Number,
     }
 }

@@ -45,7 +45,7 @@ fn compile(f: &Family, text: &str, signs: bool, order: usize) -> Scalars {
     let mut s = Scope::new("name");
     let y = match f.support {
         Support::Positive | Support::Unit | Support::CountFromOne => Sign::Positive,
-        Support::Real | Support::Angle => Sign::Unknown,
+        Support::Real | Support::Angle | Support::Lump(_) => Sign::Unknown,
         Support::From(name) => {
             let p = f.parameters.iter().find(|p| p.name == name).unwrap();
             Sign::of_low(p.range.low, p.range.low_closed)
