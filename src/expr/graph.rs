@@ -124,6 +124,7 @@ pub struct Graph {
     pub(super) sign: Vec<Sign>,
     index: HashMap<Node, Id>,
     column_sign: HashMap<u32, Sign>,
+    column_upper: HashMap<u32, f64>,
     parameter_sign: HashMap<u32, Sign>,
     pub(super) derivatives: HashMap<(Id, Variable), Id>,
 }
@@ -141,6 +142,19 @@ impl Graph {
     /// Tells the sign of a column, before it is used.
     pub fn set_column_sign(&mut self, column: u32, sign: Sign) {
         self.column_sign.insert(column, sign);
+    }
+
+    /// Tells sign and largest value of a column from its values, before it is used.
+    pub fn describe_column(&mut self, column: u32, values: &[f64]) {
+        if let Some(&first) = values.first() {
+            let (low, high) = values.iter().fold((first, first), |(l, h), &x| (l.min(x), h.max(x)));
+            self.set_column_sign(column, Sign::of_low(low, true));
+            self.column_upper.insert(column, high);
+        }
+    }
+
+    pub(super) fn column_upper(&self, column: u32) -> f64 {
+        self.column_upper.get(&column).copied().unwrap_or(f64::INFINITY)
     }
 
     /// Tells the sign of a parameter, before it is used.

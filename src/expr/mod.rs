@@ -8,6 +8,7 @@ mod blame;
 pub mod build;
 pub mod caret;
 mod climb;
+mod counts;
 mod derive;
 mod derive_tail;
 mod emit;

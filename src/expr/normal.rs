@@ -22,6 +22,8 @@ impl Graph {
                 _ => self.call_plain(function, arguments),
             },
             Function::LogLogistic => self.log_logistic(x),
+            Function::Deviance => self.deviance(x, arguments[1]),
+            Function::FactorialRemainder => self.factorial_remainder(x),
             Function::LogSumExp => {
                 let one = self.constant(1.0);
                 let parts: Vec<(Id, Id)> = arguments.iter().map(|&a| (one, a)).collect();

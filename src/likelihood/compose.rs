@@ -52,8 +52,7 @@ impl Template<'_> {
     pub(super) fn compile(&self, kind: RowKind, known: &[Option<f64>]) -> Result<Formula, LikelihoodError> {
         let mut graph = Graph::new();
         for (i, (_, values)) in self.rows.columns.iter().enumerate() {
-            let low = values.iter().copied().fold(f64::INFINITY, f64::min);
-            graph.set_column_sign(i as u32, if values.is_empty() { Sign::Unknown } else { Sign::of_low(low, true) });
+            graph.describe_column(i as u32, values);
         }
         let mut variables = Vec::new();
         let mut local_nodes = Vec::new();

@@ -13,7 +13,7 @@ use super::model::{Amount, Values};
 use super::part::Part;
 use super::rows::{FROM, RowKind, UPTO};
 use super::statement::Body;
-use crate::expr::{Graph, Id, Layout, Output, Program, Sign, Variable, compile, preparation};
+use crate::expr::{Graph, Id, Layout, Output, Program, Variable, compile, preparation};
 use crate::family::Support;
 use crate::math::Matrix;
 use crate::math::quadrature::integrate;
@@ -84,8 +84,7 @@ impl Template<'_> {
         let mut own = Graph::new();
         let is_axis = |i: usize| axes.iter().any(|a| a.column as usize == i);
         for (i, (_, values)) in self.rows.columns.iter().enumerate().filter(|(i, _)| !is_axis(*i)) {
-            let low = values.iter().copied().fold(f64::INFINITY, f64::min);
-            own.set_column_sign(i as u32, if values.is_empty() { Sign::Unknown } else { Sign::of_low(low, true) });
+            own.describe_column(i as u32, values);
         }
         let mut own_nodes = Vec::new();
         for (q, &node) in nodes.iter().enumerate() {

@@ -10,7 +10,7 @@ use super::rows::{FROM, UPTO, table_key};
 use super::statement::Body;
 use super::{LikelihoodError, LogLikelihood, Sample};
 use crate::data::Table;
-use crate::expr::{Graph, Id, Layout, Name, Output, Program, Sign, compile, preparation};
+use crate::expr::{Graph, Id, Layout, Name, Output, Program, compile, preparation};
 use crate::family::composite::{Drawn, Reads, pick as pick_index};
 use crate::family::{Amounts, Family};
 use crate::math::{Random, Vector};
@@ -116,8 +116,7 @@ impl Quantities {
     fn compile(template: &Template, known: &[Option<f64>]) -> Result<Quantities, LikelihoodError> {
         let mut graph = Graph::new();
         for (i, (_, values)) in template.rows.columns.iter().enumerate() {
-            let low = values.iter().copied().fold(f64::INFINITY, f64::min);
-            graph.set_column_sign(i as u32, if values.is_empty() { Sign::Unknown } else { Sign::of_low(low, true) });
+            graph.describe_column(i as u32, values);
         }
         let mut free = 0;
         let locals: Vec<Id> = known
