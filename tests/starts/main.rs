@@ -134,7 +134,7 @@ fn main() {
             let _ = writeln!(out, "    {why}");
         }
     };
-    for f in FAMILIES.iter().filter(|f| only.is_none_or(|o| o == f.name)) {
+    for f in FAMILIES.iter().filter(|f| !f.support.is_lump() && only.is_none_or(|o| o == f.name)) {
         let one = |set: usize| {
             let mut random = Random::new(7, set as u64);
             let theta = parameters(f, &mut random);
