@@ -6,8 +6,9 @@ use std::io::Write;
 use guyline::data::{Column, Table, Values};
 use guyline::family::{Amounts, FAMILIES, Family, Given};
 use guyline::likelihood::model::{Amount, Component, Model, Response, Setting};
-use guyline::likelihood::{LogLikelihood, prepare};
-use guyline::math::Random;
+use guyline::likelihood::simulate::Column as Drawn;
+use guyline::likelihood::{LogLikelihood, prepare, simulate};
+use guyline::math::{Random, Vector};
 use guyline::restriction::{Draft, Role, System};
 use guyline::solve::{Fit, Problem, Search, Verdict, maximise};
 use rayon::prelude::{IntoParallelIterator, ParallelIterator};
@@ -143,6 +144,39 @@ fn main() {
             (found, format!("set {set} from {theta:?}: {why}"))
         };
         tally(f.name, (0..sets).into_par_iter().map(one).collect());
+    }
+    for (name, columns, theta) in [
+        ("multivariate_normal", 3, &[1.0, -2.0, 0.5, 1.0, 3.0, 0.2, 0.7, -0.4, 0.1][..]),
+        ("dirichlet", 3, &[0.7, 2.0, 5.0][..]),
+    ] {
+        if only.is_some_and(|o| o != name) {
+            continue;
+        }
+        let one = |set: usize| {
+            let names: Vec<String> = (0..columns).map(|k| format!("y{k}")).collect();
+            let model = Model { family: name.into(), response: Response::Several(names.clone()), ..Model::default() };
+            // a response that the family can read, to be drawn anew
+            let dummy = |k: usize| Column {
+                name: names[k].clone(),
+                values: Values::Number((0..rows).map(|i| (1.0 + ((i + k) % columns) as f64) / 6.0).collect()),
+            };
+            let mut table = Table { rows, columns: (0..columns).map(dummy).collect(), ..Table::default() };
+            let drawn = prepare(&model, &table).and_then(|sample| {
+                simulate(&model, &table, &sample, &Vector::from_column_slice(theta), set as u64 + 1)
+            });
+            let drawn = match drawn {
+                Ok(d) => d,
+                Err(e) => return (Found::Refused, format!("{e:?}")),
+            };
+            for (column, new) in table.columns.iter_mut().zip(drawn) {
+                if let Drawn::Numbers(_, y) = new {
+                    column.values = Values::Number(y);
+                }
+            }
+            let (found, why) = compare(&model, &table, set as u64);
+            (found, format!("set {set}: {why}"))
+        };
+        tally(name, (0..sets).into_par_iter().map(one).collect());
     }
     for (name, families) in [
         ("mixture of two normals", vec!["normal", "normal"]),
