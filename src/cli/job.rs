@@ -50,7 +50,8 @@ impl Job {
         };
         let reading = started.elapsed();
         let started = Instant::now();
-        let sample = likelihood::prepare(&study.model, &table).map_err(|e| of_likelihood(places, &e))?;
+        let sample = likelihood::prepare_for(&study.model, &table, study.settings.information)
+            .map_err(|e| of_likelihood(places, &e))?;
         if sample.parameters().is_empty() {
             return Err(Stop::study(places.show(
                 "model",

@@ -37,6 +37,8 @@ pub(super) struct Template<'a> {
     pub(super) table: &'a Table,
     pub(super) locals: &'a [Local],
     pub(super) predictors: &'a [LocalPredictor],
+    /// Whether expected information was asked for.
+    pub(super) expected_asked: bool,
 }
 
 fn text_node(graph: &mut Graph, text: &str, scope: &Scope, place: &str) -> Result<Id, LikelihoodError> {
@@ -73,8 +75,15 @@ impl Template<'_> {
         variables.extend((0..self.predictors.len()).map(|k| Variable::Predictor(k as u32)));
         let log_density = self.density(&mut graph, kind, &scope, &local_nodes, &row_nodes)?;
         let expected = self.expected(&mut graph, kind, &row_nodes, &variables)?;
-        let expectation = match kind == RowKind::Exact && (expected.is_none() || self.checked()) {
-            true => self.expectation(&graph, known, &local_nodes, &row_nodes)?,
+        let needed = match self.statement.body {
+            // a mixture is judged by observed information unless expected is asked for
+            Body::Mixture(_) => self.expected_asked,
+            // the mass of the user's density is looked at
+            Body::Custom(_) => true,
+            Body::Density(_) | Body::Composite(..) => expected.is_none(),
+        };
+        let expectation = match kind == RowKind::Exact && needed {
+            true => self.expectation(&graph, known, &local_nodes, &row_nodes)?.map(Box::new),
             false => None,
         };
         let weighted = self.rows.weights.is_some();
@@ -91,11 +100,6 @@ impl Template<'_> {
             slopes: found.slopes,
         });
         Ok(Formula { folds: found.folds, ..formula })
-    }
-
-    /// Whether the density is the user's, so that its mass has to be looked at.
-    fn checked(&self) -> bool {
-        matches!(self.statement.body, Body::Custom(_))
     }
 
     /// Columns, parameters and lets as the user's texts see them.

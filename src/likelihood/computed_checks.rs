@@ -1,7 +1,7 @@
 //! Tests of expected information by sums and integrals, and of the mass of custom densities.
 
 use super::model::{Amount, Component, Model, Response, Setting, Values};
-use super::{Information, LogLikelihood, Order, Sample, prepare};
+use super::{Information, LogLikelihood, Order, Sample, prepare, prepare_for};
 use crate::data::{self, Column, Table};
 use crate::math::{Matrix, Vector};
 
@@ -70,7 +70,7 @@ fn a_custom_density_has_the_information_of_the_family_it_is() {
 fn minus_hessian_mean(m: &Model, ys: &[f64], weights: &[f64], at: &[f64]) -> (Matrix, Matrix) {
     let mut t = table(&[("y", ys.to_vec())]);
     t.weights = Some(weights.to_vec());
-    let s = prepare(m, &t).unwrap();
+    let s = prepare_for(m, &t, Some(Information::Expected)).unwrap();
     let phi = s.coordinates().phi(&Vector::from_vec(at.to_vec()));
     (s.information(Information::Expected, &phi).unwrap(), -s.evaluate(&phi, Order::Hessian).hessian)
 }

@@ -8,12 +8,12 @@ use rayon::prelude::{IntoParallelIterator, ParallelIterator};
 use super::LikelihoodError;
 use super::axes::Axis;
 use super::compose::Template;
-use super::formula::Pass;
+use super::formula::{Formula, Pass};
 use super::model::{Amount, Values};
 use super::part::Part;
 use super::rows::{FROM, RowKind, UPTO};
 use super::statement::Body;
-use crate::expr::{Graph, Id, Layout, Output, Program, Variable, compile, preparation};
+use crate::expr::{Graph, Id, Layout, Output, Variable, compile};
 use crate::family::Support;
 use crate::math::Matrix;
 use crate::math::quadrature::integrate;
@@ -40,10 +40,8 @@ pub(super) struct Expectation {
     quantities: usize,
     /// (quantity, variable) of each slope that is not zero.
     slopes: Vec<(usize, usize)>,
-    density: Program,
-    layout: Layout,
-    preparation: Program,
-    raw: Vec<u32>,
+    /// log f and its slopes in the quantities.
+    density: Formula,
     axes: Vec<Axis>,
     /// Raw columns that bound the response, by what they are.
     pub(super) bounds: HashMap<&'static str, u32>,
@@ -56,8 +54,8 @@ pub(super) struct Expectation {
 /// The rows of a part as expectations see them.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Inputs {
-    /// Values by raw column; those of the response are left empty.
-    columns: HashMap<u32, Vec<f64>>,
+    /// Raw columns with their values, those of the response left out.
+    columns: Vec<(u32, Vec<f64>)>,
     /// Places that part the range, by axis.
     breaks: Vec<Vec<f64>>,
 }
@@ -98,14 +96,9 @@ impl Template<'_> {
         };
         let scope = self.names(&mut own, &own_locals)?;
         let log = self.density(&mut own, RowKind::Exact, &scope, &own_locals, &own_nodes[first_row..])?;
-        let mut outputs = vec![Output::Row(log)];
-        for q in 0..nodes.len() {
-            outputs.push(Output::Row(own.derivative(log, Variable::Parameter(q as u32))));
-        }
-        let mut own_layout = Layout::default();
-        let density = compile(&mut own, &mut own_layout, &outputs, 0, false);
-        let (prepared, raw) = preparation(&mut own, &own_layout, false);
-        let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&own, slot)).collect();
+        let mut wanted = vec![log];
+        wanted.extend((0..nodes.len()).map(|q| own.derivative(log, Variable::Parameter(q as u32))));
+        let density = Formula::of_rows(&mut own, &wanted, 0);
         let mut bounds = HashMap::new();
         for key in ["trials", "successes", "failures", FROM, UPTO] {
             if let Some((i, _)) = self.rows.column(key) {
@@ -133,9 +126,6 @@ impl Template<'_> {
             nodes: Pass::default(),
             slopes: Vec::new(),
             density,
-            layout: own_layout,
-            preparation: prepared,
-            raw,
             axes,
             bounds,
             numbers,
@@ -146,8 +136,11 @@ impl Template<'_> {
     /// What the expectation needs of some rows.
     pub(super) fn inputs(&self, expectation: &Expectation, members: &[usize]) -> Inputs {
         let axis = |c: u32| expectation.axes.iter().any(|a| a.column == c);
-        let wanted = expectation.raw.iter().chain(expectation.bounds.values()).copied().filter(|&c| !axis(c));
-        let columns = wanted.map(|c| (c, self.raw(c, members))).collect();
+        let all = expectation.density.raw.iter().chain(expectation.bounds.values());
+        let mut wanted: Vec<u32> = all.copied().filter(|&c| !axis(c)).collect();
+        wanted.sort_unstable();
+        wanted.dedup();
+        let columns = wanted.into_iter().map(|c| (c, self.raw(c, members))).collect();
         let breaks = expectation
             .axes
             .iter()
@@ -246,13 +239,11 @@ impl Expectation {
     #[allow(clippy::type_complexity, reason = "three lists for the one caller beside")]
     fn distinct(&self, part: &Part, inputs: &Inputs, theta: &[f64]) -> (Vec<Row>, Vec<usize>, Vec<Vec<f64>>) {
         let outputs = part.all_rows(&self.nodes, theta);
-        let mut keys: Vec<u32> = inputs.columns.keys().copied().collect();
-        keys.sort_unstable();
         let mut at: HashMap<Vec<u64>, usize> = HashMap::new();
         let (mut rows, mut which) = (Vec::new(), Vec::with_capacity(part.rows_count()));
         for i in 0..part.rows_count() {
             let mut row: Row = outputs[..self.quantities].iter().map(|o| o[i]).collect();
-            row.extend(keys.iter().map(|k| inputs.columns[k][i]));
+            row.extend(inputs.columns.iter().map(|c| c.1[i]));
             let bits = row.iter().map(|x| x.to_bits()).collect();
             which.push(*at.entry(bits).or_insert_with(|| {
                 rows.push(row);
@@ -263,9 +254,7 @@ impl Expectation {
     }
 
     pub(super) fn input(&self, row: &Row, inputs: &Inputs, column: u32) -> f64 {
-        let mut keys: Vec<u32> = inputs.columns.keys().copied().collect();
-        keys.sort_unstable();
-        keys.iter().position(|&k| k == column).map_or(f64::NAN, |k| row[self.quantities + k])
+        inputs.columns.iter().position(|c| c.0 == column).map_or(f64::NAN, |k| row[self.quantities + k])
     }
 
     /// Mass, then E[s s'] if asked for, of a row; `None` where an integral does not reach its error.
@@ -369,8 +358,7 @@ impl Expectation {
             }
         };
         let q = self.quantities;
-        let found =
-            Part::evaluate((&self.density, &self.layout, &self.preparation, &self.raw), points.len(), &raw, &row[..q]);
+        let found = Part::evaluate(&self.density, points.len(), &raw, (0..q).collect(), Vec::new(), &row[..q]);
         (0..points.len())
             .map(|i| {
                 let mut out = vec![0.0; count];

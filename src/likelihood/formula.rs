@@ -35,7 +35,7 @@ pub(super) struct Formula {
     pub(super) hessian: Pass,
     pub(super) expected: Option<Pass>,
     /// What expected information is computed from where no formula gives it.
-    pub(super) expectation: Option<Expectation>,
+    pub(super) expectation: Option<Box<Expectation>>,
     pub(super) outer: Pass,
     /// Second derivatives with what is squared taken at its tangent, and for each variable whether a square contains it;
     /// `None` where no square bends.
@@ -79,7 +79,7 @@ pub(super) struct Ingredients {
     /// Expected information of a row between variables, where the family has it: (variable, variable, node).
     pub(super) expected: Option<Vec<(usize, usize, Id)>>,
     /// What expected information is computed from otherwise.
-    pub(super) expectation: Option<Expectation>,
+    pub(super) expectation: Option<Box<Expectation>>,
     pub(super) weighted: bool,
     /// Row outputs of the folds.
     pub(super) heights: Vec<Id>,
@@ -151,6 +151,16 @@ fn tangent(
 }
 
 impl Formula {
+    /// A formula that gives nodes row by row, and no sums.
+    pub(super) fn of_rows(graph: &mut Graph, nodes: &[Id], predictors: usize) -> Formula {
+        let outputs: Vec<Output> = nodes.iter().map(|&n| Output::Row(n)).collect();
+        let mut layout = Layout::default();
+        let program = compile(graph, &mut layout, &outputs, predictors, false);
+        let (preparation, raw) = preparation(graph, &layout, false);
+        let raw = (0..raw.columns()).filter_map(|slot| raw.raw(graph, slot)).collect();
+        Formula { rows: Pass { program, ..Pass::default() }, layout, preparation, raw, ..Formula::default() }
+    }
+
     pub(super) fn which(&self, which: Which) -> Option<&Pass> {
         match which {
             Which::Value => Some(&self.value),

@@ -38,7 +38,7 @@ pub use coordinates::Coordinates;
 pub use error::LikelihoodError;
 pub use kinks::{Kink, Place, Residuals};
 pub use model::Model;
-pub use prepare::prepare;
+pub use prepare::{prepare, prepare_for};
 pub use sample::Sample;
 pub use simulate::simulate;
 pub use wanted::wanted;

@@ -3,7 +3,7 @@
 use super::formula::{Formula, Pass};
 use super::gram;
 use super::part::{Part, Predictor};
-use crate::expr::{BLOCK, Layout, Program, Registers};
+use crate::expr::{BLOCK, Registers};
 
 impl Part {
     /// The weight of a row.
@@ -22,33 +22,16 @@ impl Part {
         }
     }
 
-    /// All row outputs of a program over points that are no rows of the data; `raw(column)` gives the values of a raw column.
+    /// What a formula gives row by row over points that are no rows of the data; `raw(column)` gives the values of a raw column.
     pub(super) fn evaluate(
-        compiled: (&Program, &Layout, &Program, &[u32]),
-        points: usize,
-        raw: &dyn Fn(u32) -> Vec<f64>,
-        parameters: &[f64],
-    ) -> Vec<Vec<f64>> {
-        Part::evaluate_over(compiled, points, raw, (0..parameters.len()).collect(), Vec::new(), parameters)
-    }
-
-    /// The same with predictors.
-    pub(super) fn evaluate_over(
-        (program, layout, preparation, columns): (&Program, &Layout, &Program, &[u32]),
+        formula: &Formula,
         points: usize,
         raw: &dyn Fn(u32) -> Vec<f64>,
         map: Vec<usize>,
         predictors: Vec<Predictor>,
         theta: &[f64],
     ) -> Vec<Vec<f64>> {
-        let formula = Formula {
-            layout: layout.clone(),
-            preparation: preparation.clone(),
-            raw: columns.to_vec(),
-            ..Formula::default()
-        };
-        let part = Part::bind(&formula, 0, points, raw, None, map, predictors);
-        part.all_rows(&Pass { program: program.clone(), ..Pass::default() }, theta)
+        Part::bind(formula, 0, points, raw, None, map, predictors).all_rows(&formula.rows, theta)
     }
 
     /// log f of each row, in the order of the part.

@@ -14,7 +14,7 @@ use super::rows::{self, RowKind, Rows};
 use super::sample::{Mixture, Sample};
 use super::start::{self, Shape};
 use super::statement::{Body, Statement};
-use super::{Coordinates, LikelihoodError, kinks, labels};
+use super::{Coordinates, Information, LikelihoodError, kinks, labels};
 use crate::data::Table;
 use crate::expr::{Name, blocks};
 use crate::family::Support;
@@ -103,6 +103,7 @@ impl<'m> Plan<'m> {
             table: self.table,
             locals: &self.template_locals,
             predictors: &self.template_predictors,
+            expected_asked: false,
         }
     }
 
@@ -171,8 +172,16 @@ fn threshold(
 /// # Errors
 /// A statement that does not fit its family or the table; values that the response cannot take.
 pub fn prepare(model: &Model, table: &Table) -> Result<Sample, LikelihoodError> {
+    prepare_for(model, table, None)
+}
+
+/// Prepares a likelihood for this information; where it is `Expected`, what sums and integrals need is compiled for mixtures too.
+///
+/// # Errors
+/// As [`prepare`].
+pub fn prepare_for(model: &Model, table: &Table, information: Option<Information>) -> Result<Sample, LikelihoodError> {
     let plan = Plan::new(model, table, false)?;
-    let template = plan.template();
+    let template = Template { expected_asked: information == Some(Information::Expected), ..plan.template() };
     let Plan { statement, rows, locals, predictors, bound_locals, bound_coefficients, designs, .. } = &plan;
     let levels = rows.levels.len().max(1);
     // rows by level and kind

@@ -182,7 +182,12 @@ pub(super) fn truncate(
         }
         Ok(Some(x))
     };
-    let (above, below) = (read(&model.above, "above")?, read(&model.below, "below")?);
+    let (mut above, mut below) = (read(&model.above, "above")?, read(&model.below, "below")?);
+    if counts {
+        // the largest count that could be recorded lies below a strict end
+        above.iter_mut().flatten().for_each(|x| *x = x.floor());
+        below.iter_mut().flatten().for_each(|x| *x = x.ceil() - 1.0);
+    }
     if above.is_none() && below.is_none() {
         return Ok(());
     }
@@ -195,9 +200,8 @@ pub(super) fn truncate(
     let mut lower = column(LOWER).unwrap_or_else(|| vec![f64::NEG_INFINITY; rows.count]);
     let mut upper = column(UPPER).unwrap_or_else(|| vec![f64::INFINITY; rows.count]);
     for i in 0..rows.count {
-        let low = above.as_ref().map_or(f64::NEG_INFINITY, |a| if counts { a[i].floor() } else { a[i] });
-        // the largest value that counts could be recorded with lies below a strict end
-        let high = below.as_ref().map_or(f64::INFINITY, |b| if counts { b[i].ceil() - 1.0 } else { b[i] });
+        let low = above.as_ref().map_or(f64::NEG_INFINITY, |a| a[i]);
+        let high = below.as_ref().map_or(f64::INFINITY, |b| b[i]);
         if low >= high {
             return Err(fault(table, i, "of above", low, &format!("less than below, {high}")));
         }
@@ -212,10 +216,7 @@ pub(super) fn truncate(
                     return Err(fault(table, i, &name, y[i], &words));
                 }
             }
-            kind => {
-                if kind == RowKind::Above && upper[i].is_finite() {
-                    upper[i] = f64::INFINITY;
-                }
+            RowKind::Above | RowKind::Below | RowKind::Between => {
                 (lower[i], upper[i]) = (lower[i].max(low), upper[i].min(high));
                 if lower[i] >= upper[i] {
                     return Err(fault(
@@ -241,10 +242,10 @@ pub(super) fn truncate(
     replace(LOWER, lower);
     replace(UPPER, upper);
     if let Some(a) = above {
-        replace(FROM, a.into_iter().map(|x| if counts { x.floor() } else { x }).collect());
+        replace(FROM, a);
     }
     if let Some(b) = below {
-        replace(UPTO, b.into_iter().map(|x| if counts { x.ceil() - 1.0 } else { x }).collect());
+        replace(UPTO, b);
     }
     Ok(())
 }

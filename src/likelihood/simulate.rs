@@ -3,6 +3,7 @@
 use rayon::prelude::{IntoParallelIterator, ParallelIterator};
 
 use super::compose::Template;
+use super::formula::Formula;
 use super::model::{Amount, Model, Response, Values};
 use super::part::Part;
 use super::prepare::Plan;
@@ -10,7 +11,7 @@ use super::rows::{FROM, UPTO, table_key};
 use super::statement::Body;
 use super::{LikelihoodError, LogLikelihood, Sample};
 use crate::data::Table;
-use crate::expr::{Graph, Id, Layout, Name, Output, Program, compile, preparation};
+use crate::expr::{Graph, Id, Name};
 use crate::family::composite::{Drawn, Reads, pick as pick_index};
 use crate::family::{Amounts, Family};
 use crate::math::{Random, Vector};
@@ -96,19 +97,13 @@ fn labels_by_row(plan: &Plan, table: &Table) -> Result<Vec<usize>, LikelihoodErr
 /// The quantities that a row's response is drawn from: row parameters, before them the shares of a mixture; parameters of a
 /// custom density.
 struct Quantities {
-    program: Program,
-    layout: Layout,
-    preparation: Program,
-    raw: Vec<u32>,
+    formula: Formula,
     custom: Option<Custom>,
 }
 
 /// A custom density over its one variable.
 struct Custom {
-    density: Program,
-    layout: Layout,
-    preparation: Program,
-    raw: Vec<u32>,
+    density: Formula,
     axes: Vec<(u32, Values)>,
 }
 
@@ -137,23 +132,19 @@ impl Quantities {
             Body::Custom(_) => locals.clone(),
         };
         nodes.extend(rows);
-        let outputs: Vec<Output> = nodes.iter().map(|&n| Output::Row(n)).collect();
-        let mut layout = Layout::default();
-        let program = compile(&mut graph, &mut layout, &outputs, template.predictors.len(), false);
-        let (preparation, raw) = preparation(&mut graph, &layout, false);
-        let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&graph, slot)).collect();
+        let formula = Formula::of_rows(&mut graph, &nodes, template.predictors.len());
         let custom = match &template.statement.body {
             Body::Custom(_) => Some(Custom::compile(template, known.len())?),
             _ => None,
         };
-        Ok(Quantities { program, layout, preparation, raw, custom })
+        Ok(Quantities { formula, custom })
     }
 
     /// One list a quantity, over some rows of a level.
     fn values(&self, plan: &Plan, level: usize, rows: &[usize], phi: &[f64]) -> Vec<Vec<f64>> {
         let template = plan.template();
-        Part::evaluate_over(
-            (&self.program, &self.layout, &self.preparation, &self.raw),
+        Part::evaluate(
+            &self.formula,
             rows.len(),
             &|c| template.raw(c, rows),
             plan.map(level),
@@ -182,19 +173,15 @@ impl Custom {
         let own: Vec<Id> = (0..quantities as u32).map(|q| graph.parameter(q)).collect();
         let scope = template.names(&mut graph, &own)?;
         let log = template.density(&mut graph, super::rows::RowKind::Exact, &scope, &own, &[])?;
-        let mut layout = Layout::default();
-        let density = compile(&mut graph, &mut layout, &[Output::Row(log)], 0, false);
-        let (preparation, raw) = preparation(&mut graph, &layout, false);
-        let raw = (0..raw.columns()).filter_map(|slot| raw.raw(&graph, slot)).collect();
-        Ok(Custom { density, layout, preparation, raw, axes })
+        Ok(Custom { density: Formula::of_rows(&mut graph, &[log], 0), axes })
     }
 
     fn log_density(&self, template: &Template, row: usize, values: &[f64], at: &[f64]) -> Vec<f64> {
         let (axis, _) = self.axes[0];
         let raw =
             |c: u32| if c == axis { at.to_vec() } else { vec![template.rows.columns[c as usize].1[row]; at.len()] };
-        Part::evaluate((&self.density, &self.layout, &self.preparation, &self.raw), at.len(), &raw, values)
-            .swap_remove(0)
+        let map = (0..values.len()).collect();
+        Part::evaluate(&self.density, at.len(), &raw, map, Vec::new(), values).swap_remove(0)
     }
 
     /// Draws by the distribution function, summed over values or, for an interval, over a grid with straight lines between.

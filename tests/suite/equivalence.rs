@@ -3,19 +3,9 @@
 //! Agreement is to 1e-9 relative (absolute for numbers below one): each side is solved to a scaled gradient of 1e-7 by a
 //! quadratically convergent iteration, so that what is left is rounding, some hundred thousand times below that.
 
-use crate::harness::{Fit, Folder, csv, near};
+use crate::harness::{Fit, Folder, Source, csv, near};
 
 const SAME: f64 = 1e-9;
-
-/// A small linear congruential source: the data need only look unordered.
-struct Source(u64);
-
-impl Source {
-    fn next(&mut self) -> f64 {
-        self.0 = self.0.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
-        (self.0 >> 11) as f64 / (1u64 << 53) as f64
-    }
-}
 
 fn same(what: &str, a: Option<f64>, b: Option<f64>) {
     let (Some(a), Some(b)) = (a, b) else { panic!("{what}: {a:?} and {b:?}") };

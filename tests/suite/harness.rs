@@ -145,6 +145,16 @@ pub fn near(a: f64, b: f64, relative: f64, absolute: f64) -> bool {
     (a - b).abs() <= (relative * b.abs()).max(absolute)
 }
 
+/// A small linear congruential source: the data need only look unordered.
+pub struct Source(pub u64);
+
+impl Source {
+    pub fn next(&mut self) -> f64 {
+        self.0 = self.0.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+        (self.0 >> 11) as f64 / (1u64 << 53) as f64
+    }
+}
+
 /// Writes columns as CSV.
 pub fn csv(columns: &[(&str, Vec<String>)]) -> String {
     let mut out = columns.iter().map(|c| c.0).collect::<Vec<_>>().join(",") + "\n";
